@@ -1,0 +1,81 @@
+// SPDX-License-Identifier: Apache-2.0
+#pragma once
+// The commands. Each has a plain options struct, a setup that ties it to the command line, and a run that
+// takes streams, so that most tests need no process.
+
+#include <CLI/CLI.hpp>
+#include <iosfwd>
+#include <optional>
+#include <string>
+#include <vector>
+
+#include "steelyard/cli/terminal.hpp"
+
+namespace steelyard::cli {
+
+/// Exit codes of the program.
+enum ExitCode : int {
+    done = 0,
+    usage = 2,          ///< the command line is wrong
+    invalid_input = 3,  ///< an input is invalid
+    nothing_weighed = 4,
+    rows_set_aside = 5,
+    failure = 70  ///< an unexpected failure of the program itself
+};
+
+/// Where a command writes.
+struct Streams {
+    std::ostream& out;
+    std::ostream& err;
+    bool colour_out = false;
+    bool colour_err = false;
+};
+
+struct WeighCommand {
+    std::vector<std::string> cases;
+    std::string priors = "renal-clinic";
+    std::string tables = "adult";
+    std::vector<std::string> exclude;
+    bool weigh_anyway = false;
+    std::string as = "text";
+    std::string out;
+};
+CLI::App* setup(CLI::App& app, WeighCommand& command);
+int run(const WeighCommand& command, const Streams& streams);
+
+struct TablesShowCommand {
+    std::string tables = "adult";
+    std::vector<std::string> findings;
+    std::string cause;
+    std::string against;
+    std::string as = "text";
+    std::string out;
+};
+struct TablesCheckCommand {
+    std::vector<std::string> tables;
+    std::string as = "text";
+};
+struct TablesCommand {
+    TablesShowCommand show;
+    TablesCheckCommand check;
+};
+CLI::App* setup(CLI::App& app, TablesCommand& command);
+int run(const TablesShowCommand& command, const Streams& streams);
+int run(const TablesCheckCommand& command, const Streams& streams);
+
+struct PriorsShowCommand {
+    std::string priors = "renal-clinic";
+    std::string tables = "adult";
+    std::string as = "text";
+    std::string out;
+};
+struct PriorsCommand {
+    PriorsShowCommand show;
+};
+CLI::App* setup(CLI::App& app, PriorsCommand& command);
+int run(const PriorsShowCommand& command, const Streams& streams);
+
+/// The whole program but for the process: parses, runs, maps every error to its exit code.
+int run_program(int argc, const char* const* argv, std::ostream& out, std::ostream& err);
+
+}  // namespace steelyard::cli

@@ -1,0 +1,87 @@
+// SPDX-License-Identifier: Apache-2.0
+#include "steelyard/cli/numbers.hpp"
+
+#include <fmt/format.h>
+
+#include <cmath>
+
+#include "steelyard/likelihoods/unit.hpp"
+
+namespace steelyard::cli {
+
+std::string percent(double probability) {
+    const double value = 100.0 * probability;
+    // Up to half a percent the honest word is "less than one"; the same at the other end.
+    if (value <= 0.5) {
+        return "<1 %";
+    }
+    if (value >= 99.5) {
+        return ">99 %";
+    }
+    return fmt::format("{:.0f} %", value);
+}
+
+std::string plain(double value, int digits) {
+    // fmt's general form is shortest for its precision but turns to exponents early; clinicians read
+    // decimals.
+    std::string text = fmt::format("{:.{}g}", value, digits);
+    if (text.find('e') == std::string::npos) {
+        return text;
+    }
+    if (std::abs(value) >= 1.0 && std::abs(value) < 1e15) {
+        return fmt::format("{:.0f}", value);
+    }
+    return text;
+}
+
+std::string signed_fixed(double value, int decimals) {
+    std::string text = fmt::format("{:+.{}f}", value, decimals);
+    const bool is_zero = text.find_first_not_of("+-0.") == std::string::npos;
+    return is_zero ? text.substr(1) : text;
+}
+
+std::string in_words(const likelihoods::Interval& interval, int digits) {
+    if (interval.is_point()) {
+        return plain(interval.low, digits);
+    }
+    // A limit reads as the laboratory wrote it; the other end is only the edge of what is plausible.
+    if (interval.high_open) {
+        return "below " + plain(interval.high, digits);
+    }
+    if (interval.low_open) {
+        return "above " + plain(interval.low, digits);
+    }
+    return plain(interval.low, digits) + " to " + plain(interval.high, digits);
+}
+
+std::string unit_shown(std::string_view ucum) {
+    const likelihoods::UnitReading reading = likelihoods::read_unit(ucum);
+    if (!reading.unit) {
+        return std::string(ucum);
+    }
+    if (reading.unit->dimension == likelihoods::Dimension::ph ||
+        reading.unit->dimension == likelihoods::Dimension::ratio) {
+        return {};
+    }
+    return std::string(reading.unit->shown);
+}
+
+std::string odds_in_words(double odds) {
+    const auto side = [](double value) {
+        if (value >= 1e6) {
+            return std::string("over a million");
+        }
+        if (value >= 100) {
+            const double scale = std::pow(10.0, std::floor(std::log10(value)) - 1.0);
+            return fmt::format("{:.0f}", std::round(value / scale) * scale);
+        }
+        return fmt::format("{:.2g}", value);
+    };
+    return odds >= 1.0 ? side(odds) + " to 1" : "1 to " + side(1.0 / odds);
+}
+
+double decibans(double nats) {
+    return nats * (10.0 / std::log(10.0));
+}
+
+}  // namespace steelyard::cli

@@ -1,0 +1,99 @@
+// SPDX-License-Identifier: Apache-2.0
+#include "steelyard/cli/output.hpp"
+
+#include <fcntl.h>
+#include <fmt/format.h>
+#include <sys/stat.h>
+#include <unistd.h>
+
+#include <cerrno>
+#include <cstdio>
+#include <cstring>
+#include <stdexcept>
+#include <system_error>
+#include <vector>
+
+namespace steelyard::cli {
+namespace {
+
+std::string reason(int error) {
+    return std::generic_category().message(error);
+}
+
+/// Owns a temporary file: closed, and removed unless it has been moved into place.
+class TemporaryFile {
+  public:
+    explicit TemporaryFile(const std::string& beside) : name_(beside + ".XXXXXX") {
+        descriptor_ = mkstemp(name_.data());
+        if (descriptor_ < 0) {
+            throw OutputError(fmt::format("cannot write {}: {}", beside, reason(errno)));
+        }
+    }
+    TemporaryFile(const TemporaryFile&) = delete;
+    TemporaryFile& operator=(const TemporaryFile&) = delete;
+    TemporaryFile(TemporaryFile&&) = delete;
+    TemporaryFile& operator=(TemporaryFile&&) = delete;
+    ~TemporaryFile() {
+        if (descriptor_ >= 0) {
+            close(descriptor_);
+        }
+        if (!moved_) {
+            unlink(name_.c_str());
+        }
+    }
+
+    void write_all(std::string_view text) {
+        while (!text.empty()) {
+            const ssize_t count = ::write(descriptor_, text.data(), text.size());
+            if (count < 0) {
+                if (errno == EINTR) {
+                    continue;
+                }
+                throw OutputError(fmt::format("cannot write {}: {}", name_, reason(errno)));
+            }
+            text.remove_prefix(static_cast<std::size_t>(count));
+        }
+        // mkstemp gives 0600; a result is readable as any file the user makes.
+        const mode_t mask = umask(0);
+        umask(mask);
+        if (fchmod(descriptor_, 0666U & ~mask) != 0 || fsync(descriptor_) != 0) {
+            throw OutputError(fmt::format("cannot write {}: {}", name_, reason(errno)));
+        }
+    }
+
+    void move_to(const std::string& path) {
+        if (std::rename(name_.c_str(), path.c_str()) != 0) {
+            throw OutputError(fmt::format("cannot write {}: {}", path, reason(errno)));
+        }
+        moved_ = true;
+    }
+
+  private:
+    std::string name_;
+    int descriptor_ = -1;
+    bool moved_ = false;
+};
+
+}  // namespace
+
+void write_whole(const std::string& path, std::string_view text) {
+    // A device or a pipe cannot be replaced by renaming; it takes the text as it comes.
+    struct stat status {};
+    if (stat(path.c_str(), &status) == 0 && !S_ISREG(status.st_mode)) {
+        if (S_ISDIR(status.st_mode)) {
+            throw OutputError(fmt::format("cannot write {}: it is a folder", path));
+        }
+        std::FILE* file = std::fopen(path.c_str(), "w");
+        const bool good = file != nullptr && std::fwrite(text.data(), 1, text.size(), file) == text.size();
+        const int error = errno;
+        if ((file != nullptr && std::fclose(file) != 0) || !good) {
+            throw OutputError(fmt::format("cannot write {}: {}", path, reason(error)));
+        }
+        return;
+    }
+    TemporaryFile file(path);
+    file.write_all(text);
+    file.move_to(path);
+}
+
+}  // namespace steelyard::cli

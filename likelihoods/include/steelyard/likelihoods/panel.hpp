@@ -1,0 +1,94 @@
+// SPDX-License-Identifier: Apache-2.0
+#pragma once
+// One patient's values at one time, made canonical. A value may be known only to lie beyond a limit (`<5
+// mmol/L`): it is kept as an interval, never replaced by a number.
+
+#include <map>
+#include <optional>
+#include <string>
+#include <string_view>
+#include <utility>
+#include <vector>
+
+#include "steelyard/document/diagnostic.hpp"
+#include "steelyard/likelihoods/analyte.hpp"
+
+namespace steelyard::likelihoods {
+
+/// A closed or half-open interval of values; a point when low == high.
+struct Interval {
+    double low = 0.0, high = 0.0;
+    bool low_open = false, high_open = false;
+
+    static Interval point(double value) noexcept { return {value, value, false, false}; }
+    bool is_point() const noexcept { return low == high; }
+    bool operator==(const Interval&) const = default;
+};
+
+/// A value as it entered the panel.
+struct Reading {
+    Interval value;            ///< in the canonical unit of its analyte or derived quantity
+    std::string as_read;       ///< the number as written, `<5` included
+    std::string unit_as_read;  ///< the unit as written; empty when omitted
+    document::SourcePosition where;
+};
+
+enum class Sex { unknown, female, male };
+
+/// A feature that was looked for: its level, one of those its table or the set's `features` name.
+struct Observation {
+    std::string level;
+    document::SourcePosition where;
+};
+
+struct Panel {
+    std::string case_id;
+    document::SourcePosition where;
+    Sex sex = Sex::unknown;
+    std::optional<double> age;                                 ///< [a]
+    std::map<std::string, Reading, std::less<>> measured;      ///< by analyte id
+    std::map<std::string, Reading, std::less<>> given;         ///< derived quantities given as known, by id
+    std::map<std::string, Observation, std::less<>> observed;  ///< by feature id
+    std::string urine_ph_method;                               ///< `electrode`, `dipstick` or empty
+    std::optional<std::string> final_cause;                    ///< only in audits
+};
+
+/// The features a case may mention, and the levels of each: from a table set.
+struct FeatureVocabulary {
+    std::map<std::string, std::vector<std::string>, std::less<>> levels;
+};
+
+/// Builds a panel entry by entry, whatever the file format: each reader calls `set` with flat names. Faults
+/// are added at the position given; a faulty entry leaves nothing behind.
+class PanelBuilder {
+  public:
+    PanelBuilder(const FeatureVocabulary& vocabulary, document::Diagnostics& faults);
+
+    void start(std::string case_id, const document::SourcePosition& where);
+    /// A flat name (`serum_potassium`, `age`, `sex`, `gfr`, `nephrocalcinosis`, `urine_method`,
+    /// `final_cause`) and its text with unit (`2.8 mmol/L`, `<5 mmol/L`, `present`).
+    void set(std::string_view flat_name, std::string_view text, const document::SourcePosition& where);
+    /// The same with the unit apart, as CSV headers and FHIR give it.
+    void set(std::string_view flat_name, std::string_view number, std::string_view unit,
+             const document::SourcePosition& where);
+    Panel finish();
+
+  private:
+    /// Whether nothing gave this quantity or feature before; conflicting_values otherwise.
+    bool is_new(std::string_view id, std::string_view flat_name, const document::SourcePosition& where);
+    /// Whether the name is that of a quantity, which is then dealt with.
+    bool set_number(std::string_view flat_name, std::string_view text, std::string_view unit_apart,
+                    const document::SourcePosition& where);
+    void set_age(std::string_view text, std::string_view unit_apart, const document::SourcePosition& where);
+    void set_word(std::string_view flat_name, std::string_view text, std::string_view unit_apart,
+                  const document::SourcePosition& where);
+    void unknown_name(std::string_view flat_name, std::string_view text,
+                      const document::SourcePosition& where);
+
+    const FeatureVocabulary& vocabulary_;
+    document::Diagnostics& faults_;
+    Panel panel_;
+    std::map<std::string, std::pair<std::string, document::SourcePosition>, std::less<>> seen_;
+};
+
+}  // namespace steelyard::likelihoods

@@ -1,0 +1,50 @@
+// SPDX-License-Identifier: Apache-2.0
+#pragma once
+// From the quantities and features of a panel to bands: which evidence is read, which is set aside and why,
+// and what is missing. Nothing is dropped without a word.
+
+#include <optional>
+#include <string>
+#include <vector>
+
+#include "steelyard/likelihoods/table_set.hpp"
+
+namespace steelyard::likelihoods {
+
+enum class Use { read, set_aside, missing };
+
+/// What became of one finding of the set.
+struct FindingReading {
+    std::size_t table = 0;  ///< index into TableSet::tables
+    Use use = Use::missing;
+    std::optional<Interval> value;  ///< of a quantity, canonical
+    std::string level;              ///< of a feature
+    std::vector<Eigen::Index>
+        cells;            ///< bands whose probabilities add up: one; several for a half-known joint table
+    std::string band;     ///< the band's name
+    std::string why_not;  ///< set aside: the reason; missing: what is lacking
+    std::vector<std::string>
+        remarks;  ///< what a reader should know: a dipstick near an edge, a computed input
+    std::vector<std::string>
+        unchecked;        ///< subjects of conditions that could not be checked: nothing is known of them
+    double weight = 1.0;  ///< dependence factor d of its group
+    std::string group;    ///< name of its group when it weighs less than 1
+};
+
+/// Values of the case that nothing in this set reads.
+struct Pattern {
+    std::vector<FindingReading> findings;  ///< one per table, in the order of the set
+    std::vector<std::string>
+        unread;  ///< ids of measured or observed entries that no table, condition or gate used
+};
+
+Pattern read_pattern(const TableSet& set, const Panel& panel, const Quantities& quantities);
+
+/// ln P(what was seen | cause) for the findings read: shape (read findings, causes), rows in the order of the
+/// set.
+Eigen::ArrayXXd log_likelihood_rows(const TableSet& set, const Pattern& pattern,
+                                    const std::vector<std::string>& causes);
+/// The dependence factors of the same rows.
+Eigen::ArrayXd row_weights(const Pattern& pattern);
+
+}  // namespace steelyard::likelihoods

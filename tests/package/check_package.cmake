@@ -1,0 +1,28 @@
+# SPDX-License-Identifier: Apache-2.0
+# cmake -DRELEASE=<build> -DWORK=<folder> -DCONSUMER=<project> -DVERSION=<x.y.z> -P check_package.cmake
+function(run)
+  execute_process(COMMAND ${ARGN} RESULT_VARIABLE code OUTPUT_VARIABLE out ERROR_VARIABLE err)
+  if(NOT code EQUAL 0)
+    message(FATAL_ERROR "failed (${code}): ${ARGN}\n${out}${err}")
+  endif()
+  set(out "${out}" PARENT_SCOPE)
+endfunction()
+
+file(REMOVE_RECURSE ${WORK})
+run(${CMAKE_COMMAND} --install ${RELEASE} --prefix ${WORK}/prefix)
+foreach(path bin/steelyard share/steelyard/sets/renal-clinic.yaml share/steelyard/tables/adult/set.yaml
+    include/steelyard/engine/posterior.hpp include/steelyard/likelihoods/table_set.hpp)
+  if(NOT EXISTS ${WORK}/prefix/${path})
+    message(FATAL_ERROR "not installed: ${path}")
+  endif()
+endforeach()
+run(${CMAKE_COMMAND} -S ${CONSUMER} -B ${WORK}/consumer -DCMAKE_PREFIX_PATH=${WORK}/prefix -DWANTED_VERSION=${VERSION})
+run(${CMAKE_COMMAND} --build ${WORK}/consumer)
+run(${WORK}/consumer/consumer)
+if(NOT out MATCHES "0\\.900 0\\.100")
+  message(FATAL_ERROR "the consumer printed: ${out}")
+endif()
+run(${WORK}/prefix/bin/steelyard --version)
+if(NOT out MATCHES "steelyard ${VERSION}")
+  message(FATAL_ERROR "the installed program printed: ${out}")
+endif()
