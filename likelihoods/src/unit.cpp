@@ -175,7 +175,7 @@ std::string with_plain_micro(std::string_view text) {
     constexpr auto signs = std::to_array<std::string_view>({"\xC2\xB5", "\xCE\xBC"});
     std::string plain;
     while (!text.empty()) {
-        const auto sign =
+        const auto* const sign =
             std::find_if(signs.begin(), signs.end(), [&](auto s) { return text.starts_with(s); });
         if (sign != signs.end()) {
             plain += 'u';

@@ -341,7 +341,7 @@ TEST(Pattern, CensoredInputsGiveACensoredGap) {
 TEST(Pattern, EveryValueFallsInExactlyOneBand) {
     const TableSet set = with_calcium_edges("[1.0, 1.7, 2.0, 2.6, 3.1]");
     const std::vector<double>& edges = set.find_table("serum_calcium")->edges;
-    rc::check("one band, and the one that holds the value", [&] {
+    EXPECT_TRUE(rc::check("one band, and the one that holds the value", [&] {
         const double value = 0.8 + 5.2 * static_cast<double>(*rc::gen::inRange(0, 1000001)) / 1e6;
         likelihoods::Panel panel;
         panel.measured["serum_calcium"].value = likelihoods::Interval::point(value);
@@ -352,7 +352,7 @@ TEST(Pattern, EveryValueFallsInExactlyOneBand) {
         constexpr double hair = 1e-8;
         RC_ASSERT(band == 0 || value >= edges[band - 1] - hair);
         RC_ASSERT(band == edges.size() || value < edges[band] + hair);
-    });
+    }));
 }
 
 }  // namespace
