@@ -31,17 +31,11 @@ std::string priors_text(const priors::PriorSet& set, const likelihoods::TableSet
                        colour) +
             "\n";
     for (const priors::PriorCause& cause : set.causes) {
-        text += padded(tables.title_of(cause.id), 47) + padded_left(percent(cause.probability), 7) +
+        text += padded(visible(tables.title_of(cause.id)), 47) + padded_left(percent(cause.probability), 7) +
                 padded_left(visible(cause.as_given), 10) +
                 padded_left(cause.range_as_given.empty() ? "none given" : visible(cause.range_as_given), 16) +
                 "\n";
-        std::string grounds = cause.grounds ? std::string(document::to_string(cause.grounds->basis))
-                                            : std::string("no basis given");
-        if (cause.grounds) {
-            for (const std::string& key : cause.grounds->sources) {
-                grounds += " " + visible(key);
-            }
-        }
+        const std::string grounds = cause.grounds ? grounds_in_words(*cause.grounds) : "no basis given";
         text += wrapped(cause.note.empty() ? grounds : grounds + ": " + visible(cause.note), "    ", "    ");
     }
     text += "\n";
@@ -118,22 +112,21 @@ int run(const PriorsShowCommand& command, const Streams& streams) {
     const auto tables = open_tables(command.tables, faults);
     const auto set =
         open_priors(command.priors, tables ? cause_ids(*tables) : std::vector<std::string>{}, faults);
+    if (tables && set) {
+        check_composites(*tables, *set, faults);
+    }
     if (!faults.empty()) {
         throw document::LoadError(faults);
     }
     std::string text;
     if (command.as == "json") {
-        text = priors_json(*set, *tables).dump(2) + "\n";
+        text = dumped(priors_json(*set, *tables), 2) + "\n";
     } else if (command.as == "markdown") {
         text = priors::priors_markdown(*set);
     } else {
         text = priors_text(*set, *tables, streams.colour_out && command.out.empty());
     }
-    if (command.out.empty()) {
-        streams.out << text;
-    } else {
-        write_whole(command.out, text);
-    }
+    write_result(command.out, text, streams.out);
     return done;
 }
 

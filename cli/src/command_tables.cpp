@@ -146,7 +146,7 @@ int run(const TablesShowCommand& command, const Streams& streams) {
     if (command.as == "json") {
         nlohmann::ordered_json json = tables_json(set, tables, command.cause, command.against);
         json["caution"] = caution_text;
-        text = json.dump(2) + "\n";
+        text = dumped(json, 2) + "\n";
     } else if (command.as == "markdown") {
         if (!command.cause.empty() || !command.findings.empty()) {
             throw UsageError(
@@ -158,11 +158,7 @@ int run(const TablesShowCommand& command, const Streams& streams) {
                            streams.colour_out && command.out.empty());
         text += "\n" + wrapped(std::string("Caution: ") + caution_text, "", "  ");
     }
-    if (command.out.empty()) {
-        streams.out << text;
-    } else {
-        write_whole(command.out, text);
-    }
+    write_result(command.out, text, streams.out);
     return done;
 }
 
@@ -173,6 +169,7 @@ int run(const TablesCheckCommand& command, const Streams& streams) {
     const std::vector<std::string> names =
         command.tables.empty() ? std::vector<std::string>{"adult"} : command.tables;
     for (const std::string& name : names) {
+        const std::size_t before = faults.size();
         if (const auto set = open_tables(name, faults)) {
             const std::vector<std::string> notes = remarks(*set);
             text += check_text(*set, notes);
@@ -181,12 +178,17 @@ int run(const TablesCheckCommand& command, const Streams& streams) {
                            {"digest", set->digest},
                            {"sound", true},
                            {"remarks", notes}});
+        } else {
+            all.push_back({{"name", name}, {"sound", false}, {"faults", faults.size() - before}});
         }
     }
     // Sound sets are reported although another has faults: checking several at once is for finding out which.
-    streams.out << (command.as == "json" ? all.dump(2) + "\n" : text);
+    streams.out << (command.as == "json" ? dumped(all, 2) + "\n" : text);
     if (!faults.empty()) {
-        throw document::LoadError(faults);
+        document::print(streams.err, faults, streams.colour_err);
+        streams.err << fmt::format("steelyard: {} fault{} found\n", faults.size(),
+                                   faults.size() == 1 ? "" : "s");
+        return invalid_input;
     }
     return done;
 }

@@ -66,7 +66,7 @@ std::string write_json(const std::vector<Weighing>& weighings, const likelihoods
     if (one_a_line) {
         std::string text;
         for (const Weighing& weighing : weighings) {
-            text += report_json(weighing, tables, provenance).dump() + "\n";
+            text += dumped(report_json(weighing, tables, provenance)) + "\n";
         }
         return text;
     }
@@ -74,7 +74,7 @@ std::string write_json(const std::vector<Weighing>& weighings, const likelihoods
     for (const Weighing& weighing : weighings) {
         all.push_back(report_json(weighing, tables, provenance));
     }
-    return all.dump(2) + "\n";
+    return dumped(all, 2) + "\n";
 }
 
 }  // namespace
@@ -120,6 +120,9 @@ int run(const WeighCommand& command, const Streams& streams) {
     if (tables) {
         panels = load_cases(command.cases, tables->vocabulary(), faults);
     }
+    if (tables && all_priors) {
+        check_composites(*tables, *all_priors, faults);
+    }
     if (!faults.empty()) {
         throw document::LoadError(faults);
     }
@@ -133,15 +136,11 @@ int run(const WeighCommand& command, const Streams& streams) {
             weigh_case(*tables, priors, std::move(panel), {command.weigh_anyway, command.exclude}));
         weighed += weighings.back().weighed ? 1U : 0U;
     }
-    const bool to_file = !command.out.empty();
+    const bool to_file = !command.out.empty() && command.out != "-";
     const std::string text = command.as == "text"
                                  ? write_text(weighings, *tables, provenance, streams.colour_out && !to_file)
                                  : write_json(weighings, *tables, provenance, command.as == "ndjson");
-    if (to_file) {
-        write_whole(command.out, text);
-    } else {
-        streams.out << text;
-    }
+    write_result(command.out, text, streams.out);
     for (const Weighing& weighing : weighings) {
         if (!weighing.weighed) {
             streams.err << wrapped(

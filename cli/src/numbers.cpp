@@ -5,6 +5,7 @@
 
 #include <cmath>
 
+#include "steelyard/likelihoods/interval_words.hpp"
 #include "steelyard/likelihoods/unit.hpp"
 
 namespace steelyard::cli {
@@ -41,17 +42,7 @@ std::string signed_fixed(double value, int decimals) {
 }
 
 std::string in_words(const likelihoods::Interval& interval, int digits) {
-    if (interval.is_point()) {
-        return plain(interval.low, digits);
-    }
-    // A limit reads as the laboratory wrote it; the other end is only the edge of what is plausible.
-    if (interval.high_open) {
-        return "below " + plain(interval.high, digits);
-    }
-    if (interval.low_open) {
-        return "above " + plain(interval.low, digits);
-    }
-    return plain(interval.low, digits) + " to " + plain(interval.high, digits);
+    return likelihoods::interval_in_words(interval, [digits](double value) { return plain(value, digits); });
 }
 
 std::string unit_shown(std::string_view ucum) {
@@ -71,7 +62,7 @@ std::string odds_in_words(double odds) {
         if (value >= 1e6) {
             return std::string("over a million");
         }
-        if (value >= 100) {
+        if (value >= 99.5) {
             const double scale = std::pow(10.0, std::floor(std::log10(value)) - 1.0);
             return fmt::format("{:.0f}", std::round(value / scale) * scale);
         }

@@ -36,6 +36,23 @@ std::optional<priors::PriorSet> open_priors(const std::string& name,
     }
 }
 
+void check_composites(const likelihoods::TableSet& tables, const priors::PriorSet& priors,
+                      document::Diagnostics& faults) {
+    for (const priors::PriorCause& prior : priors.causes) {
+        const likelihoods::Cause* cause = tables.find_cause(prior.id);
+        if (cause == nullptr) {
+            continue;
+        }
+        for (const std::string& part : cause->parts) {
+            if (priors.find(part) == nullptr) {
+                faults.add(prior.where, document::Code::composite_without_parts,
+                           fmt::format("{} is weighed, but its part {} is not", prior.id, part),
+                           fmt::format("give {} a prior too, or leave the composite out", part));
+            }
+        }
+    }
+}
+
 std::vector<std::string> cause_ids(const likelihoods::TableSet& tables) {
     std::vector<std::string> ids;
     for (const likelihoods::Cause& cause : tables.causes) {

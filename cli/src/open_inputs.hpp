@@ -27,6 +27,11 @@ std::optional<priors::PriorSet> open_priors(const std::string& name,
                                             const std::vector<std::string>& known_causes,
                                             document::Diagnostics& faults);
 
+/// A prior set that names a composite cause must name its parts too: otherwise a patient with one part alone
+/// would have to be given the composite. composite_without_parts at the composite's line.
+void check_composites(const likelihoods::TableSet& tables, const priors::PriorSet& priors,
+                      document::Diagnostics& faults);
+
 std::vector<std::string> cause_ids(const likelihoods::TableSet& tables);
 
 /// `; did you mean X?`, or `; there are: A, B, ...`.

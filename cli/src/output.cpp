@@ -8,7 +8,7 @@
 
 #include <cerrno>
 #include <cstdio>
-#include <cstring>
+#include <ostream>
 #include <stdexcept>
 #include <system_error>
 #include <vector>
@@ -76,6 +76,14 @@ class TemporaryFile {
 
 }  // namespace
 
+void write_result(const std::string& path, std::string_view text, std::ostream& out) {
+    if (path.empty() || path == "-") {
+        out << text;
+    } else {
+        write_whole(path, text);
+    }
+}
+
 void write_whole(const std::string& path, std::string_view text) {
     // A device or a pipe cannot be replaced by renaming; it takes the text as it comes.
     struct stat status {};
@@ -84,9 +92,14 @@ void write_whole(const std::string& path, std::string_view text) {
             throw OutputError(fmt::format("cannot write {}: it is a folder", path));
         }
         std::FILE* file = std::fopen(path.c_str(), "w");
-        const bool good = file != nullptr && std::fwrite(text.data(), 1, text.size(), file) == text.size();
-        const int error = errno;
-        if ((file != nullptr && std::fclose(file) != 0) || !good) {
+        bool good = file != nullptr && std::fwrite(text.data(), 1, text.size(), file) == text.size();
+        int error = errno;
+        // What is still buffered is written on closing: that may be where a full device is noticed.
+        if (file != nullptr && std::fclose(file) != 0 && good) {
+            good = false;
+            error = errno;
+        }
+        if (!good) {
             throw OutputError(fmt::format("cannot write {}: {}", path, reason(error)));
         }
         return;

@@ -68,8 +68,9 @@ int run_program(int argc, const char* const* argv, std::ostream& out, std::ostre
     app.get_formatter()->column_width(24);
     app.require_subcommand(1);
     app.footer(
-        wrapped(std::string("Caution: ") + caution_text, "", "") +
-        "\n`steelyard COMMAND --help` explains a command. Formats and methods are described in docs/.");
+        wrapped(std::string("Caution: ") + caution_text, "", "") + "\n" +
+        wrapped("`steelyard COMMAND --help` explains a command. Formats and methods are described in docs/.",
+                "", ""));
     Colour colour = Colour::automatic;
     const std::map<std::string, Colour> choices = {
         {"auto", Colour::automatic}, {"always", Colour::always}, {"never", Colour::never}};

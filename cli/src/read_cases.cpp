@@ -6,9 +6,11 @@
 #include <array>
 #include <map>
 
+#include "open_inputs.hpp"
 #include "steelyard/cli/terminal.hpp"
 #include "steelyard/document/node.hpp"
 #include "steelyard/document/strict_map.hpp"
+#include "steelyard/likelihoods/derived.hpp"
 
 namespace steelyard::cli {
 namespace {
@@ -23,7 +25,17 @@ using likelihoods::PanelBuilder;
 constexpr std::array<std::string_view, 7> sections = {"serum", "plasma",  "arterial", "venous",
                                                       "urine", "derived", "observed"};
 
-void read_section(const Node& node, std::string_view section, PanelBuilder& builder, Diagnostics& faults) {
+std::string feature_hint(const std::string& word, const likelihoods::FeatureVocabulary& vocabulary) {
+    std::vector<std::string> known;
+    for (const auto& [feature, levels] : vocabulary.levels) {
+        known.push_back(feature);
+    }
+    return suggestion(word, known).substr(2);
+}
+
+void read_section(const Node& node, std::string_view section,
+                  const likelihoods::FeatureVocabulary& vocabulary, PanelBuilder& builder,
+                  Diagnostics& faults) {
     if (node.kind != document::Kind::mapping) {
         faults.add(node.where(), Code::wrong_type,
                    fmt::format("{} must be a mapping of names to values", section),
@@ -41,6 +53,17 @@ void read_section(const Node& node, std::string_view section, PanelBuilder& buil
             faults.add(entry.value.where(), Code::empty_value,
                        fmt::format("{}.{} has no value", section, visible(entry.key)),
                        "leave the line out when the value is not known");
+        } else if (section == "derived" && likelihoods::find_derived(entry.key) == nullptr) {
+            faults.add(
+                {*node.file, entry.line, entry.column}, Code::unknown_analyte,
+                fmt::format("{} is no derived quantity", visible(entry.key)),
+                "measured values stand under serum, plasma, arterial, venous or urine; see docs/formats.md");
+        } else if (section == "observed" && !vocabulary.levels.contains(entry.key)) {
+            const bool measured = likelihoods::find_quantity(entry.key) != nullptr;
+            faults.add({*node.file, entry.line, entry.column}, Code::unknown_feature,
+                       fmt::format("{} is no feature of this table set", visible(entry.key)),
+                       measured ? "it is a measured value: write it under its section"
+                                : feature_hint(entry.key, vocabulary));
         } else {
             builder.set(name, entry.value.text, entry.value.where());
         }
@@ -68,7 +91,7 @@ std::optional<Panel> read_case(const Node& node, const likelihoods::FeatureVocab
     }
     for (const std::string_view section : sections) {
         if (const Node* value = map.optional(section)) {
-            read_section(*value, section, builder, faults);
+            read_section(*value, section, vocabulary, builder, faults);
         }
     }
     map.finish();

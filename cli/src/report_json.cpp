@@ -19,6 +19,8 @@ Json urgent_json(const Weighing& weighing, const likelihoods::TableSet& tables) 
                         {"unit", value.unit},
                         {"limit", value.limit},
                         {"side", value.is_low ? "low" : "high"},
+                        {"as_known", value.shown},
+                        {"certain", value.certain},
                         {"basis", document::to_string(value.grounds.basis)},
                         {"source", value.grounds.sources}});
     }
@@ -70,8 +72,8 @@ Json ledger_entry_json(const Weighing& weighing, const likelihoods::TableSet& ta
     if (reading.value) {
         const bool point = reading.value->is_point();
         json["value"] = point ? Json(reading.value->low) : Json(nullptr);
-        json["value_low"] = reading.value->low;
-        json["value_high"] = reading.value->high;
+        json["value_low"] = reading.value->low_is_floor ? Json(nullptr) : Json(reading.value->low);
+        json["value_high"] = reading.value->high_is_ceiling ? Json(nullptr) : Json(reading.value->high);
     } else {
         json["value"] = reading.level.empty() ? Json(nullptr) : Json(reading.level);
         json["value_low"] = nullptr;
@@ -126,7 +128,14 @@ nlohmann::ordered_json report_json(const Weighing& weighing, const likelihoods::
     for (const auto& [basis, share] : weighing.by_basis.shares) {
         report["weight_by_basis"][std::string(document::to_string(basis))] = share;
     }
-    report["missing"] = weighing.missing;
+    report["missing"] = Json::array();
+    report["barred"] = Json::object();
+    for (const MissingFinding& finding : weighing.missing) {
+        report["missing"].push_back(finding.id);
+        if (!finding.barred.empty()) {
+            report["barred"][finding.id] = finding.barred;
+        }
+    }
     report["unread"] = weighing.unread;
     report["provenance"] = {{"version", provenance.version},
                             {"tables",

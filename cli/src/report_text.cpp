@@ -25,25 +25,6 @@ std::string with_unit(const std::string& number, std::string_view ucum) {
     return unit.empty() ? number : number + " " + unit;
 }
 
-std::string basis_word(document::Basis basis) {
-    switch (basis) {
-        case document::Basis::elicited:
-            return "judgement";
-        case document::Basis::practice:
-            return "common practice";
-        default:
-            return std::string(document::to_string(basis));
-    }
-}
-
-std::string grounds_words(const document::Grounds& grounds) {
-    std::string text = basis_word(grounds.basis);
-    for (const std::string& key : grounds.sources) {
-        text += " " + visible(key);
-    }
-    return text;
-}
-
 /// Whether the share read is one that the table's `least` has raised. Raised shares lie a hair below it,
 /// because the row is normalised afterwards.
 bool at_least_allowed(const likelihoods::EvidenceRow& row, const likelihoods::EvidenceTable& table,
@@ -78,16 +59,22 @@ class TextReport {
     }
 
   private:
+    // Everything a file or a case supplied passes through here, so nothing of it reaches a terminal
+    // unescaped.
     void line(std::string_view text = {}) {
+        text_ += visible(text);
+        text_ += '\n';
+    }
+    void coloured_line(const std::string& text) {
         text_ += text;
         text_ += '\n';
     }
     void heading(std::string_view text) {
         line();
-        line(emphasised(text, colour_));
+        coloured_line(emphasised(visible(text), colour_));
     }
     void paragraph(std::string_view text, std::string_view first = "  ", std::string_view rest = "  ") {
-        text_ += wrapped(text, first, rest);
+        text_ += wrapped(visible(text), first, rest);
     }
 
     void head() {
@@ -109,12 +96,13 @@ class TextReport {
             return;
         }
         line();
-        line(alarming("URGENT: act by local policy before reading on", colour_));
+        coloured_line(alarming("URGENT: act by local policy before reading on", colour_));
         for (const likelihoods::UrgentValue& value : weighing_.urgent) {
             paragraph(
-                fmt::format("{} {} is at or {} {} (limit: {})", tables_.title_of(value.quantity),
-                            with_unit(plain(value.value, 6), value.unit), value.is_low ? "below" : "above",
-                            with_unit(plain(value.limit, 6), value.unit), grounds_words(value.grounds)),
+                fmt::format("{} {} {} at or {} {} (limit: {})", tables_.title_of(value.quantity),
+                            with_unit(value.shown, value.unit), value.certain ? "is" : "may be",
+                            value.is_low ? "below" : "above", with_unit(plain(value.limit, 6), value.unit),
+                            grounds_in_words(value.grounds)),
                 "  ! ", "    ");
             cite(value.grounds, tables_.sources);
         }
@@ -143,9 +131,9 @@ class TextReport {
 
     void posterior() {
         line();
-        line(emphasised(padded("How likely each cause is", title_width + 2) + padded_left("prior", 7) +
-                            padded_left("posterior", 11) + "  |: prior",
-                        colour_));
+        coloured_line(emphasised(padded("How likely each cause is", title_width + 2) +
+                                     padded_left("prior", 7) + padded_left("posterior", 11) + "  |: prior",
+                                 colour_));
         if (weighing_.weighed_anyway) {
             paragraph(
                 "Weighed because it was asked for: this panel is out of scope, and the tables do not speak "
@@ -168,6 +156,9 @@ class TextReport {
         if (!grounds.empty()) {
             paragraph(grounds);
         }
+        paragraph(
+            "No interval is given: the uncertainty of the priors and of the tables is not carried into these "
+            "percentages.");
     }
 
     static std::string bar(const WeighedCause& cause) {
@@ -237,17 +228,25 @@ class TextReport {
         std::string note;
         if (entry.reading.value) {
             note = fmt::format("band {}; ", entry.reading.band);
+            const likelihoods::QuantityValue* quantity = weighing_.quantities.find(table.finding);
+            const likelihoods::DerivedQuantity* derived = likelihoods::find_derived(table.finding);
+            if (quantity != nullptr && derived != nullptr &&
+                quantity->origin == likelihoods::Origin::computed) {
+                note += fmt::format("computed: {}; ", derived->formula);
+            }
+        } else if (table.kind == likelihoods::FindingKind::joint) {
+            note = fmt::format("{}; ", entry.reading.band);
         }
-        note += fmt::format("A {}, B {}", grounds_words(row_a.grounds), grounds_words(row_b.grounds));
+        note += fmt::format("A {}, B {}", grounds_in_words(row_a.grounds), grounds_in_words(row_b.grounds));
         used_.insert_all(table, row_a.grounds, row_b.grounds);
         if (entry.reading.weight < 1.0) {
-            note += fmt::format("; counts {:.2f} because it shares {} with another finding",
+            note += fmt::format("; weight times {:.2f}: it and another finding read here both reflect {}",
                                 entry.reading.weight, visible(entry.reading.group));
         }
         if (at_least_allowed(row_a, table, entry.log_likelihood[a]) ||
             at_least_allowed(row_b, table, entry.log_likelihood[b])) {
-            note +=
-                fmt::format("; a judged share stands at the least allowed, {} %", plain(100.0 * table.least));
+            note += fmt::format("; raised to {} %, the least that a judged share may be",
+                                plain(100.0 * table.least));
         }
         for (const std::string& remark : entry.reading.remarks) {
             note += "; " + visible(remark);
@@ -255,11 +254,18 @@ class TextReport {
         paragraph(note, "      ", "      ");
     }
 
-    /// As measured, or a computed value cut to what its inputs support.
+    /// As the laboratory wrote it when no conversion took place, so that 7.20 keeps its figures; a computed
+    /// value is cut to what its inputs support.
     std::string shown_value(const LedgerEntry& entry) const {
+        const likelihoods::Interval& value = *entry.reading.value;
+        const auto measured = weighing_.panel.measured.find(entry.table->finding);
+        if (measured != weighing_.panel.measured.end() && value.is_point() &&
+            document::number_from(measured->second.as_read) == value.low) {
+            return measured->second.as_read;
+        }
         const likelihoods::QuantityValue* quantity = weighing_.quantities.find(entry.table->finding);
         const bool computed = quantity != nullptr && quantity->origin == likelihoods::Origin::computed;
-        return in_words(*entry.reading.value, computed ? 3 : 6);
+        return in_words(value, computed ? 3 : 6);
     }
 
     void set_aside() {
@@ -312,13 +318,31 @@ class TextReport {
         if (!weighing_.weighed || weighing_.missing.empty()) {
             return;
         }
-        heading("Not known here; each would be read if given");
+        heading("Not known here");
         std::string list;
-        for (const std::string& id : weighing_.missing) {
-            std::string title = tables_.title_of(id);
-            list += (list.empty() ? "" : "; ") + title;
+        for (const MissingFinding& finding : weighing_.missing) {
+            if (finding.barred.empty()) {
+                list += (list.empty() ? "" : "; ") + tables_.title_of(finding.id);
+            }
         }
-        paragraph(list);
+        paragraph(
+            "This is not advice to test: what may safely be done in this patient is for the clinician to "
+            "say.");
+        if (!list.empty()) {
+            paragraph("Would be read: " + list + ".", "  - ", "    ");
+        }
+        const bool some_barred =
+            std::any_of(weighing_.missing.begin(), weighing_.missing.end(),
+                        [](const MissingFinding& finding) { return !finding.barred.empty(); });
+        if (some_barred) {
+            paragraph("Would not be read in this case:", "  - ", "    ");
+        }
+        for (const MissingFinding& finding : weighing_.missing) {
+            if (!finding.barred.empty()) {
+                paragraph(fmt::format("{}: {}", tables_.title_of(finding.id), finding.barred), "      ",
+                          "        ");
+            }
+        }
     }
 
     void unread() {
@@ -353,7 +377,7 @@ class TextReport {
         if (used_.list.empty()) {
             return;
         }
-        heading("Sources of the figures above");
+        heading("Sources named above");
         for (const auto& [key, source] : used_.list) {
             paragraph(citation(source), "  ", "    ");
         }

@@ -50,6 +50,27 @@ Provenance provenance_of(const likelihoods::TableSet& tables, const priors::Prio
             priors.title,           priors.name,  priors.digest};
 }
 
+std::string dumped(const nlohmann::ordered_json& json, int indent) {
+    return json.dump(indent, ' ', false, nlohmann::ordered_json::error_handler_t::replace);
+}
+
+std::string grounds_in_words(const document::Grounds& grounds) {
+    std::string keys;
+    for (const std::string& key : grounds.sources) {
+        keys += (keys.empty() ? "" : ", ") + visible(key);
+    }
+    switch (grounds.basis) {
+        case document::Basis::elicited:
+            return keys.empty() ? "judgement" : fmt::format("judgement (bearing on it: {})", keys);
+        case document::Basis::memory:
+            return keys.empty() ? "from memory" : fmt::format("from memory ({})", keys);
+        case document::Basis::practice:
+            return keys.empty() ? "common practice" : fmt::format("common practice ({})", keys);
+        default:
+            return fmt::format("{} {}", document::to_string(grounds.basis), keys);
+    }
+}
+
 std::string citation(const document::Source& source) {
     std::string text = visible(source.key) + ": " + visible(source.cite);
     if (!text.ends_with('.')) {
@@ -95,10 +116,11 @@ std::string grounds_sentence(const Weighing& weighing) {
                "percentages as a ranking, not as measured chances.";
     }
     if (read_somewhere >= 0.995) {
-        return "All of the weight between these two rests on published figures.";
+        return "All of the weight of the findings between these two rests on published figures.";
     }
     return fmt::format(
-        "Of the weight between these two, {} rests on published figures and {} on judgement or memory.",
+        "Of the weight of the findings between these two, {} rests on published figures and {} on judgement "
+        "or memory.",
         percent(read_somewhere), percent(judged));
 }
 

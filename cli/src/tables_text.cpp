@@ -25,12 +25,14 @@ std::string letter(std::size_t index) {
     return index < 26 ? std::string(1, last) : letter(index / 26 - 1) + last;
 }
 
-std::string grounds_words(const document::Grounds& grounds) {
-    std::string text(document::to_string(grounds.basis));
-    for (const std::string& key : grounds.sources) {
-        text += " " + visible(key);
+/// How a row was given; the n of a judged row is what it is worth, not patients that were seen.
+std::string given_in_words(const EvidenceRow& row) {
+    std::string text = row.as_given;
+    const std::size_t n = text.rfind(", n ");
+    if (document::is_judged(row.grounds.basis) && n != std::string::npos) {
+        text.replace(n, 4, ", worth ");
     }
-    return text;
+    return visible(text);
 }
 
 /// Beyond a thousand either way the digits of a ratio say nothing.
@@ -44,8 +46,9 @@ std::string ratio_words(double ratio) {
 std::string head(const EvidenceTable& table, bool colour) {
     const std::string unit = unit_shown(table.unit);
     std::string text =
-        "\n" + emphasised(unit.empty() ? table.title : fmt::format("{} [{}]", table.title, unit), colour);
-    return text + fmt::format("  ({})\n", table.burden);
+        "\n" +
+        emphasised(visible(unit.empty() ? table.title : fmt::format("{} [{}]", table.title, unit)), colour);
+    return text + fmt::format("  ({}; {})\n", table.finding, table.burden);
 }
 
 std::string conditions(const TableSet& set, const EvidenceTable& table) {
@@ -93,9 +96,10 @@ std::string probabilities(const TableSet& set, const EvidenceTable& table, bool 
     }
     for (std::size_t k = 0; k < table.rows.size(); ++k) {
         const EvidenceRow& row = table.rows[k];
-        text += wrapped(fmt::format("{}  {} ({}){}", letter(k), row.as_given, grounds_words(row.grounds),
-                                    row.note.empty() ? "" : ": " + visible(row.note)),
-                        "  ", "     ");
+        text += wrapped(
+            fmt::format("{}  {} ({}){}", letter(k), given_in_words(row), grounds_in_words(row.grounds),
+                        row.note.empty() ? "" : ": " + visible(row.note)),
+            "  ", "     ");
     }
     return text + conditions(set, table) + sources(table);
 }
@@ -114,9 +118,9 @@ std::string ratios(const TableSet& set, const EvidenceTable& table, const std::s
     }
     for (const std::string& id : {cause, against}) {
         const EvidenceRow& row = likelihoods::row_of(set, table, id);
-        text +=
-            wrapped(fmt::format("{}: {} ({})", set.title_of(id), row.as_given, grounds_words(row.grounds)),
-                    "  ", "    ");
+        text += wrapped(fmt::format("{}: {} ({})", visible(set.title_of(id)), given_in_words(row),
+                                    grounds_in_words(row.grounds)),
+                        "  ", "    ");
     }
     return text;
 }
@@ -139,7 +143,7 @@ std::string tables_text(const TableSet& set, const std::vector<const EvidenceTab
         for (const likelihoods::Cause& entry : set.causes) {
             if (!entry.parts.empty()) {
                 text += wrapped(fmt::format("{} ({}) takes its rows from its parts: {}", visible(entry.title),
-                                            entry.id, takes_words(set, entry)),
+                                            entry.id, visible(takes_words(set, entry))),
                                 "  ", "    ");
             }
         }
@@ -147,7 +151,7 @@ std::string tables_text(const TableSet& set, const std::vector<const EvidenceTab
         text += wrapped(fmt::format("How many times likelier each band is under \"{}\" than under \"{}\"; "
                                     "the interval is that of "
                                     "the tables' own uncertainty.",
-                                    set.title_of(cause), set.title_of(against)),
+                                    visible(set.title_of(cause)), visible(set.title_of(against))),
                         "", "");
     }
     for (const EvidenceTable* table : tables) {

@@ -2,7 +2,6 @@
 #include "steelyard/cli/weighing.hpp"
 
 #include <algorithm>
-#include <array>
 #include <cmath>
 #include <map>
 #include <numeric>
@@ -32,19 +31,18 @@ std::vector<WeighedCause> causes_to_weigh(const likelihoods::TableSet& tables, c
     return causes;
 }
 
-/// Each line's weight is shared equally by the two rows it is the difference of, and filed under their bases.
+/// A line is the difference of two rows and rests on the weaker of them: Basis is ordered from study to
+/// memory.
 WeightByBasis weight_by_basis(const likelihoods::TableSet& tables, const std::vector<LedgerEntry>& ledger,
                               const std::string& leader, const std::string& runner_up) {
     std::map<document::Basis, double> sums;
     double total = 0.0;
     for (const LedgerEntry& entry : ledger) {
-        if (entry.reading.use != Use::read) {
-            continue;
-        }
-        const double weight = std::abs(entry.nats);
-        total += weight;
-        for (const std::string& cause : {leader, runner_up}) {
-            sums[likelihoods::row_of(tables, *entry.table, cause).grounds.basis] += 0.5 * weight;
+        if (entry.reading.use == Use::read) {
+            const double weight = std::abs(entry.nats);
+            total += weight;
+            sums[std::max(likelihoods::row_of(tables, *entry.table, leader).grounds.basis,
+                          likelihoods::row_of(tables, *entry.table, runner_up).grounds.basis)] += weight;
         }
     }
     WeightByBasis result;
@@ -90,7 +88,7 @@ void weigh_findings(const likelihoods::TableSet& tables, const likelihoods::Patt
     for (const likelihoods::FindingReading& reading : pattern.findings) {
         const likelihoods::EvidenceTable& table = tables.tables[reading.table];
         if (reading.use == Use::missing) {
-            result.missing.push_back(table.finding);
+            result.missing.push_back({table.finding, reading.barred});
             continue;
         }
         LedgerEntry entry{reading, &table, {}, 0.0};
@@ -128,7 +126,7 @@ Weighing weigh_case(const likelihoods::TableSet& tables, const priors::PriorSet&
     } else {
         for (const likelihoods::FindingReading& reading : pattern.findings) {
             if (reading.use == Use::missing) {
-                result.missing.push_back(tables.tables[reading.table].finding);
+                result.missing.push_back({tables.tables[reading.table].finding, reading.barred});
             }
         }
     }

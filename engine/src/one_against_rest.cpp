@@ -62,6 +62,17 @@ Eigen::ArrayXXd shape_from_rest(const Eigen::Ref<const Eigen::ArrayXXd>& ratio,
     return shape;
 }
 
+Eigen::ArrayXXd log_slope_from_rest(const Eigen::Ref<const Eigen::ArrayXXd>& ratio,
+                                    const Eigen::Ref<const Eigen::ArrayXd>& study_mix) {
+    check_ratio("log_slope_from_rest", ratio, study_mix);
+    Eigen::ArrayXXd slope(ratio.rows(), ratio.cols());
+    for (Eigen::Index cause = 0; cause < ratio.cols(); ++cause) {
+        const double w = study_mix(cause);
+        slope.col(cause) = (1.0 - w) / (1.0 - w + w * ratio.col(cause));
+    }
+    return slope;
+}
+
 Eigen::ArrayXd band_sum(const Eigen::Ref<const Eigen::ArrayXXd>& ratio,
                         const Eigen::Ref<const Eigen::ArrayXd>& study_mix) {
     check_ratio("band_sum", ratio, study_mix);

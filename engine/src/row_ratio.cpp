@@ -8,6 +8,8 @@
 #include <boost/math/special_functions/trigamma.hpp>
 #include <cmath>
 #include <limits>
+#include <optional>
+#include <string_view>
 #include <variant>
 #include <vector>
 
@@ -102,6 +104,7 @@ std::vector<Cell> summary_cells(const SummaryLaw& law, Eigen::Index band) {
     const double spread = std::sqrt(trigamma(freedom / 2.0));
     const double from = middle - std::max(9.0 * spread, 24.0 / freedom);
     const double to = middle + 6.0 * spread;
+    const double floor = std::max(law.least, least_share);
     std::vector<Cell> cells;
     cells.reserve(static_cast<std::size_t>(variances) * (means - 1));
     double total = 0.0;
@@ -118,7 +121,7 @@ std::vector<Cell> summary_cells(const SummaryLaw& law, Eigen::Index band) {
             const double z = -reach + 2.0 * reach * j / (means - 1);
             const double mean = law.mean + sigma * z / std::sqrt(law.n);
             const double share = detail::normal_mass((lower - mean) / sigma, (upper - mean) / sigma);
-            const double log_share = std::log(std::max(share, least_share));
+            const double log_share = std::log(std::max(share, floor));
             if (j > 0) {
                 const double mass = weight * detail::normal_mass(previous_z, z);
                 cells.push_back({std::min(previous, log_share), std::max(previous, log_share), mass});
@@ -178,6 +181,17 @@ Grid summary_grid(const SummaryLaw& law, Eigen::Index band) {
     });
 }
 
+constexpr std::string_view name = "LogShareLaw";
+
+double checked_share(const CompiledRow& row, Eigen::Index band) {
+    check_index(name, "band", band, row.probability.size());
+    const double share = row.probability(band);
+    if (!(share > 0.0 && share <= 1.0)) {
+        throw DomainError(name, "row.probability", band, std::nullopt, share, "above 0 and at most 1");
+    }
+    return share;
+}
+
 }  // namespace
 
 LogShareLaw LogShareLaw::fixed(double share) {
@@ -192,13 +206,8 @@ LogShareLaw LogShareLaw::fixed(double share) {
     return law;
 }
 
-LogShareLaw::LogShareLaw(const CompiledRow& row, Eigen::Index band, const CompiledRow* reference) {
-    constexpr const char* name = "LogShareLaw";
-    check_index(name, "band", band, row.probability.size());
-    share_ = row.probability(band);
-    if (!(share_ > 0.0 && share_ <= 1.0)) {
-        throw DomainError(name, "row.probability", band, std::nullopt, share_, "above 0 and at most 1");
-    }
+LogShareLaw::LogShareLaw(const CompiledRow& row, Eigen::Index band, const CompiledRow* reference)
+    : share_(checked_share(row, band)) {
     Grid grid;
     if (const auto* dirichlet = std::get_if<DirichletLaw>(&row.law)) {
         check_size(name, "row.law.alpha", dirichlet->alpha.size(), row.probability.size());
@@ -208,7 +217,12 @@ LogShareLaw::LogShareLaw(const CompiledRow& row, Eigen::Index band, const Compil
         check_size(name, "row.law.edges", summary->edges.size(), row.probability.size() - 1);
         check_positive(name, "row.law.sd", summary->sd);
         check_between(name, "row.law.n", summary->n, 2.0, std::numeric_limits<double>::infinity());
+        check_between(name, "row.law.least", summary->least, 0.0, 0.2);
         grid = with_boost(name, "row.law.n", summary->n, [&] { return summary_grid(*summary, band); });
+        if (summary->least > 0.0) {
+            // The raised bands are the row's smallest: `least` over the sum by which the row was normalised.
+            grid.start += std::log(row.probability.minCoeff() / summary->least);
+        }
     } else if (const auto* ratio = std::get_if<RatioLaw>(&row.law)) {
         check_size(name, "row.law.log_sd", ratio->log_sd.size(), row.probability.size());
         const double sd = ratio->log_sd(band);

@@ -141,7 +141,7 @@ Applicability check_conditions(const TableSet& set, const std::vector<Condition>
             case Answer::holds:
                 break;
             case Answer::fails:
-                return {false, fmt::format("{} ({})", condition.otherwise, checked.known), {}, {}};
+                return {false, true, fmt::format("{} ({})", condition.otherwise, checked.known), {}, {}};
             case Answer::unknown:
                 if (!condition.set_aside_when_unknown) {
                     if (checked.given) {
@@ -157,7 +157,7 @@ Applicability check_conditions(const TableSet& set, const std::vector<Condition>
         }
     }
     if (!unknown_reason.empty()) {
-        return {false, unknown_reason, {}, {}};
+        return {false, false, unknown_reason, {}, {}};
     }
     return result;
 }

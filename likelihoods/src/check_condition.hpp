@@ -15,6 +15,7 @@ std::string known_as(const Panel& panel, std::string_view id, const QuantityValu
 
 struct Applicability {
     bool usable = true;
+    bool fails = false;                  ///< a condition is known to fail; not so when it is only unknown
     std::string why_not;                 ///< when not usable
     std::vector<std::string> remarks;    ///< conditions that a censored value leaves open
     std::vector<std::string> unchecked;  ///< subjects of conditions of which nothing is known

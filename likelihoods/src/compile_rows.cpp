@@ -8,6 +8,7 @@
 
 #include "given_row.hpp"
 #include "steelyard/engine/domain_error.hpp"
+#include "steelyard/engine/one_against_rest.hpp"
 
 namespace steelyard::likelihoods::detail {
 
@@ -47,6 +48,9 @@ class RowCompiler {
         }
         guarded(given_.front(), [&] {
             const engine::RestSolution solution = engine::solve_ratio_to_rest(ratio, as_array(study_mix));
+            // What is published is the uncertainty of ln R; the row moves by less.
+            const Eigen::ArrayXXd shape = engine::shape_from_rest(ratio, as_array(study_mix));
+            const Eigen::ArrayXXd slope = engine::log_slope_from_rest(ratio, as_array(study_mix));
             table_.study_mix = as_array(study_mix);
             table_.incoherence = solution.incoherence;
             table_.scale_is_unique = solution.scale_is_unique;
@@ -60,7 +64,8 @@ class RowCompiler {
                     continue;
                 }
                 row.row.compiled.probability = solution.probability.col(c);
-                row.row.compiled.law = engine::RatioLaw{ratio.col(c).log(), as_array(row.log_sd)};
+                row.row.compiled.law =
+                    engine::RatioLaw{shape.col(c).log(), as_array(row.log_sd) * slope.col(c)};
                 keep_at_least(row);
                 state_[static_cast<std::size_t>(c)] = State::done;
             }
@@ -172,7 +177,7 @@ class RowCompiler {
     }
 
     /// The table's `least`, on judged rows only.
-    void keep_at_least(GivenRow& row) {
+    void keep_at_least(GivenRow& row) const {
         if (!document::is_judged(row.row.grounds.basis)) {
             return;
         }
@@ -183,9 +188,12 @@ class RowCompiler {
             return;
         }
         compiled.probability = bounded.probability;
-        // A Dirichlet keeps its worth and moves its mean to the row as used, so that draws are centred on it.
+        // A Dirichlet keeps its worth and moves its mean to the row as used; the law of a mean and spread is
+        // told where it ends. Ratios are centred on the row as used in any case.
         if (auto* law = std::get_if<engine::DirichletLaw>(&compiled.law)) {
             law->alpha = (bounded.probability * law->alpha.sum()).eval();
+        } else if (auto* summary = std::get_if<engine::SummaryLaw>(&compiled.law)) {
+            summary->least = table_.least;
         }
     }
 

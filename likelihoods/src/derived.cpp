@@ -267,7 +267,8 @@ class Derivation {
         if (glycosuria != panel_.observed.end() && glycosuria->second.level == "present" &&
             !has("urine_osmolal_gap")) {
             std::vector<std::string> absent = missing(inputs);
-            absent.emplace_back("urine_glucose");
+            absent.emplace_back(absent.empty() ? "glycosuria is present and urine glucose was not given"
+                                               : "urine_glucose");
             lacks("urine_osmolal_gap", std::move(absent));
             return;
         }
@@ -331,10 +332,12 @@ class Derivation {
             if (above < value.low) {
                 value.low = above;
                 value.low_open = true;
+                value.low_is_floor = box[1].low_is_floor;
             }
             if (below > value.high) {
                 value.high = below;
                 value.high_open = false;
+                value.high_is_ceiling = box[1].high_is_ceiling;
             }
         }
     }

@@ -182,7 +182,9 @@ class Writer {
         const bool judged = std::any_of(table.rows.begin(), table.rows.end(), [](const EvidenceRow& row) {
             return document::is_judged(row.grounds.basis);
         });
-        return judged ? fmt::format(" Judged rows are kept at or above {} %.", percent(table.least)) : "";
+        return judged ? fmt::format(" Bands of judged rows are raised to {} %, then the row is normalised.",
+                                    percent(table.least))
+                      : "";
     }
 
     void notes(const EvidenceTable& table) {

@@ -1,21 +1,27 @@
 // SPDX-License-Identifier: Apache-2.0
-// The gate asks its questions in the order a clinician would: is the patient an adult; is bicarbonate low
-// because of a metabolic acidosis; does the gas agree with itself; is the gap normal. Each answer is a
-// sentence and a gravity.
+// The gate asks its questions in the order a clinician would: is the patient an adult and not pregnant; does
+// the gas agree with itself; is bicarbonate low because of a metabolic acidosis; is the gap normal. Each
+// answer is a sentence and a gravity.
 
 #include "steelyard/likelihoods/gate.hpp"
 
 #include <fmt/format.h>
 
 #include <algorithm>
+#include <array>
 #include <cmath>
 #include <utility>
 
+#include "known_quantity.hpp"
 #include "steelyard/likelihoods/chemistry.hpp"
+#include "steelyard/likelihoods/interval_words.hpp"
 #include "wording.hpp"
 
 namespace steelyard::likelihoods {
 namespace {
+
+using detail::Answer;
+using detail::Known;
 
 /// Middle of the normal range of arterial pH: compensation of one disorder does not carry pH past it. Basis:
 /// practice.
@@ -26,65 +32,38 @@ constexpr double low_gap = 3.0;
 /// By how far below or above its reference an unknown albumin is reckoned with [g/L]. Basis: elicited.
 constexpr double albumin_doubt = 10.0;
 
-/// Four significant digits: enough to tell a value from its limit, too few to show rounding noise.
-std::string number(double value) {
-    return fmt::format("{:.4g}", value == 0.0 ? 0.0 : value);
-}
-
-std::string amount(double value, std::string_view ucum) {
-    return number(value) + detail::unit_after_number(ucum);
-}
+/// What the gate looks at, beside the features its settings name.
+constexpr auto inputs = std::to_array<std::string_view>({
+    "serum_bicarbonate",
+    "serum_total_co2",
+    "arterial_ph",
+    "arterial_pco2",
+    "arterial_bicarbonate",
+    "venous_ph",
+    "venous_pco2",
+    "venous_bicarbonate",
+    "serum_sodium",
+    "serum_chloride",
+    "serum_albumin",
+    "serum_lactate",
+    "serum_beta_hydroxybutyrate",
+    "anion_gap",
+    "anion_gap_corrected",
+    "delta_ratio",
+    "bicarbonate_from_gas",
+    "expected_pco2",
+    "gfr",
+});
 
 std::string mmol(double value) {
-    return amount(value, "mmol/L");
+    return detail::decimal(value, {0, 2}) + " mmol/L";
 }
 std::string mm_hg(double value) {
-    return amount(value, "mm[Hg]");
+    return detail::decimal(value, {0, 1}) + " mmHg";
 }
-
-/// A value in a sentence, with one number for a point and both ends for a censored one.
-std::string in_words(const Interval& value, std::string_view ucum) {
-    return value.is_point() ? amount(value.low, ucum)
-                            : fmt::format("between {} and {}", number(value.low), amount(value.high, ucum));
+std::string ph(double value) {
+    return detail::decimal(value, {2, 3});
 }
-
-/// A comparison with a censored value may have no answer.
-enum class Answer { no, yes, unknown };
-
-Answer is_below(const Interval& value, double limit) {
-    if (value.high < limit || (value.high == limit && value.high_open)) {
-        return Answer::yes;
-    }
-    return value.low >= limit ? Answer::no : Answer::unknown;
-}
-
-Answer is_above(const Interval& value, double limit) {
-    if (value.low > limit || (value.low == limit && value.low_open)) {
-        return Answer::yes;
-    }
-    return value.high <= limit ? Answer::no : Answer::unknown;
-}
-
-/// A quantity that may be unknown; every comparison with an unknown one is unknown.
-class Known {
-  public:
-    Known(const Quantities& quantities, std::string_view id) : quantity_(quantities.find(id)) {}
-    explicit operator bool() const { return quantity_ != nullptr; }
-    const Interval& value() const { return quantity_->value; }
-    bool is_point() const { return quantity_ != nullptr && quantity_->value.is_point(); }
-    double point() const { return quantity_->value.low; }
-    const QuantityValue& quantity() const { return *quantity_; }
-    Answer below(double limit) const {
-        return quantity_ ? is_below(quantity_->value, limit) : Answer::unknown;
-    }
-    Answer above(double limit) const {
-        return quantity_ ? is_above(quantity_->value, limit) : Answer::unknown;
-    }
-    std::string words() const { return in_words(quantity_->value, quantity_->unit); }
-
-  private:
-    const QuantityValue* quantity_;
-};
 
 class Examination {
   public:
@@ -95,15 +74,17 @@ class Examination {
           bicarbonate_(quantities, "serum_bicarbonate"),
           ph_(quantities, "arterial_ph"),
           pco2_(quantities, "arterial_pco2"),
+          venous_ph_(quantities, "venous_ph"),
           expected_pco2_(quantities, "expected_pco2"),
           gfr_(quantities, "gfr"),
           gap_(quantities, "anion_gap"),
-          corrected_(quantities, "anion_gap_corrected") {}
+          corrected_(quantities, "anion_gap_corrected"),
+          gfr_barred_(why_gfr_is_barred()) {}
 
     GateResult run() && {
-        age();
-        acidosis();
+        patient();
         gas_consistency();
+        acidosis();
         gap();
         GateResult result;
         std::stable_sort(reasons_.begin(), reasons_.end(),
@@ -124,18 +105,44 @@ class Examination {
   private:
     void say(GateStatus status, std::string words) { reasons_.emplace_back(status, std::move(words)); }
 
-    bool alkali_is_given() const {
-        const auto seen = panel_.observed.find(settings_.alkali_feature);
-        return !settings_.alkali_feature.empty() && seen != panel_.observed.end() &&
-               seen->second.level == "present";
+    bool is_present(const std::string& feature) const {
+        const auto seen = panel_.observed.find(feature);
+        return !feature.empty() && seen != panel_.observed.end() && seen->second.level == "present";
     }
 
-    void age() {
+    void patient() {
         const double least = settings_.age_least.value;
-        if (panel_.age && *panel_.age < least) {
-            say(GateStatus::out_of_scope, fmt::format("age {} is below {}: the tables are for adults",
-                                                      amount(*panel_.age, "a"), amount(least, "a")));
+        if (!panel_.age) {
+            say(GateStatus::in_scope, "age was not given: the tables are for adults");
+        } else if (*panel_.age < least) {
+            say(GateStatus::out_of_scope,
+                fmt::format("age {}{} is below {}{}: the tables are for adults",
+                            detail::decimal_beside(*panel_.age, least, {0, 1}),
+                            detail::unit_after_number("a"), detail::decimal(least, {0, 1}),
+                            detail::unit_after_number("a")));
         }
+        if (is_present(settings_.pregnancy_feature)) {
+            say(GateStatus::caution,
+                "pregnancy lowers bicarbonate by hyperventilation; the tables do not speak of it");
+        }
+    }
+
+    /// Bicarbonate with, where it was not measured as such, what it was taken from.
+    std::string bicarbonate_words() const {
+        const std::string words = bicarbonate_.words_beside(settings_.bicarbonate_low.value);
+        const QuantityValue& quantity = bicarbonate_.quantity();
+        if (quantity.origin != Origin::computed || quantity.from.empty()) {
+            return words;
+        }
+        const std::string& from = quantity.from.front();
+        if (const Known total(quantities_, "serum_total_co2"); from == "serum_total_co2" && total) {
+            return fmt::format("{} (total CO2 {} less {})", words, interval_in_words(total.value(), 3),
+                               detail::decimal(chemistry::dissolved_co2, {0, 1}));
+        }
+        const std::string_view vessel = from.starts_with("venous") ? "venous" : "arterial";
+        return from.ends_with("bicarbonate")
+                   ? fmt::format("{} (from the {} gas)", words, vessel)
+                   : fmt::format("{} (computed from {} pH and pCO2)", words, vessel);
     }
 
     void acidosis() {
@@ -147,7 +154,7 @@ class Examination {
         switch (bicarbonate_.below(limit)) {
             case Answer::yes:
                 say(GateStatus::in_scope,
-                    fmt::format("bicarbonate {} is below {}", bicarbonate_.words(), mmol(limit)));
+                    fmt::format("bicarbonate {} is below {}", bicarbonate_words(), mmol(limit)));
                 compensation();
                 return;
             case Answer::no:
@@ -157,38 +164,49 @@ class Examination {
                 say(GateStatus::caution,
                     fmt::format("acidosis could not be confirmed: bicarbonate is {}, on either "
                                 "side of {}",
-                                bicarbonate_.words(), mmol(limit)));
+                                bicarbonate_words(), mmol(limit)));
                 return;
         }
     }
 
+    /// Acidaemia without a low bicarbonate is respiratory only if pCO2 is high; otherwise the acidosis is
+    /// mild, or treated, or a metabolic alkalosis stands beside it.
     void bicarbonate_not_low() {
         const double limit = settings_.bicarbonate_low.value;
-        if (ph_.below(settings_.ph_low.value) == Answer::yes) {
-            say(GateStatus::out_of_scope,
-                fmt::format(
-                    "respiratory acidosis: arterial pH {} is below {} while bicarbonate {} is not below {}",
-                    ph_.words(), number(settings_.ph_low.value), bicarbonate_.words(), mmol(limit)));
-        } else if (alkali_is_given()) {
+        const double acidaemia = settings_.ph_low.value;
+        const double hypercapnia = settings_.pco2_high.value;
+        if (ph_.below(acidaemia) == Answer::yes) {
+            const std::string finding =
+                fmt::format("arterial pH {} is below {} while bicarbonate {} is not below {}",
+                            ph_.words_beside(acidaemia), ph(acidaemia), bicarbonate_words(), mmol(limit));
+            if (pco2_.above(hypercapnia) == Answer::yes && gas_agrees_) {
+                say(GateStatus::out_of_scope,
+                    fmt::format("respiratory acidosis: {} and pCO2 {} is above {}", finding,
+                                pco2_.words_beside(hypercapnia), mm_hg(hypercapnia)));
+            } else {
+                say(GateStatus::caution, finding + ": a mild, treated or mixed disorder");
+            }
+        } else if (is_present(settings_.alkali_feature)) {
             say(GateStatus::caution,
                 fmt::format(
                     "bicarbonate is not low while alkali is given ({}, limit {}); the panel is read as a "
                     "treated acidosis",
-                    bicarbonate_.words(), mmol(limit)));
+                    bicarbonate_words(), mmol(limit)));
         } else {
             say(GateStatus::out_of_scope, fmt::format("no metabolic acidosis: bicarbonate {} is not below {}",
-                                                      bicarbonate_.words(), mmol(limit)));
+                                                      bicarbonate_words(), mmol(limit)));
         }
     }
 
     /// With a low bicarbonate: is it the acidosis, or the kidney's answer to a respiratory alkalosis; is
     /// breathing as expected? A range of expected pCO2 is compared by its nearer end, so that only a certain
-    /// misfit is reported.
+    /// misfit is reported. A gas that contradicts itself is not judged.
     void compensation() {
         if (!ph_ && !pco2_) {
-            say(GateStatus::in_scope,
-                "no arterial gas was given: a respiratory alkalosis, which also lowers bicarbonate, is not "
-                "excluded");
+            without_arterial_gas();
+            return;
+        }
+        if (!gas_agrees_) {
             return;
         }
         const double alkalaemia = settings_.ph_high.value;
@@ -196,40 +214,78 @@ class Examination {
             say(GateStatus::out_of_scope,
                 fmt::format(
                     "primary respiratory alkalosis: bicarbonate is low while arterial pH {} is above {}",
-                    ph_.words(), number(alkalaemia)));
+                    ph_.words_beside(alkalaemia), ph(alkalaemia)));
             return;
         }
-        const Answer acidaemic = ph_.below(settings_.ph_low.value);
+        const double acidaemia = settings_.ph_low.value;
+        const Answer acidaemic = ph_.below(acidaemia);
         if (acidaemic == Answer::yes) {
             say(GateStatus::in_scope,
-                fmt::format("arterial pH {} is below {}", ph_.words(), number(settings_.ph_low.value)));
+                fmt::format("arterial pH {} is below {}", ph_.words_beside(acidaemia), ph(acidaemia)));
         } else if (acidaemic == Answer::no) {
             say(GateStatus::in_scope,
                 fmt::format("arterial pH {} is not below {}: the acidosis is compensated or mixed",
-                            ph_.words(), number(settings_.ph_low.value)));
+                            ph_.words_beside(acidaemia), ph(acidaemia)));
         }
-        if (!pco2_ || !expected_pco2_) {
-            return;
+        if (pco2_ && expected_pco2_) {
+            breathing();
         }
+    }
+
+    void breathing() {
         const double band = settings_.expected_pco2_band.value;
-        const std::string measured = fmt::format("pCO2 {} is", pco2_.words());
+        const double highest = expected_pco2_.value().high + band;
+        const double lowest = expected_pco2_.value().low - band;
         const std::string expected =
             fmt::format("the expected {} (within {})", expected_pco2_.words(), mm_hg(band));
-        if (pco2_.above(expected_pco2_.value().high + band) == Answer::yes) {
-            say(GateStatus::caution,
-                fmt::format("added respiratory acidosis: {} above {}", measured, expected));
-        } else if (pco2_.below(expected_pco2_.value().low - band) == Answer::yes) {
+        if (pco2_.above(highest) == Answer::yes) {
+            say(GateStatus::caution, fmt::format("added respiratory acidosis: pCO2 {} is above {}",
+                                                 pco2_.words_beside(highest), expected));
+        } else if (pco2_.below(lowest) == Answer::yes) {
+            const std::string measured = fmt::format("pCO2 {} is", pco2_.words_beside(lowest));
             if (ph_.below(middle_ph) == Answer::no) {
                 say(GateStatus::out_of_scope,
                     fmt::format(
                         "primary respiratory alkalosis: {} below {} and arterial pH {} is not below {}",
-                        measured, expected, ph_.words(), number(middle_ph)));
+                        measured, expected, ph_.words_beside(middle_ph), ph(middle_ph)));
             } else {
                 say(GateStatus::caution, fmt::format("{} respiratory alkalosis: {} below {}",
                                                      ph_ ? "added" : "added or primary", measured, expected));
             }
         } else if (pco2_.is_point() && expected_pco2_.is_point()) {
-            say(GateStatus::in_scope, fmt::format("{} as expected, {}", measured, expected.substr(4)));
+            say(GateStatus::in_scope,
+                fmt::format("pCO2 {} is as expected, {}", pco2_.words(), expected.substr(4)));
+        }
+    }
+
+    /// Venous pH lies a little below arterial pH (about 0.03; basis: memory), so that a low one tells that
+    /// the arterial one is not high. Venous pCO2 depends on the flow through the tissue and tells nothing of
+    /// breathing.
+    void without_arterial_gas() {
+        if (!venous_ph_) {
+            say(GateStatus::in_scope,
+                "no arterial gas was given: a respiratory alkalosis, which also lowers bicarbonate, is not "
+                "excluded");
+            return;
+        }
+        const double acidaemia = settings_.ph_low.value;
+        const double alkalaemia = settings_.ph_high.value;
+        const std::string_view limits = "breathing cannot be judged from a venous gas";
+        if (venous_ph_.below(acidaemia) == Answer::yes) {
+            say(GateStatus::in_scope,
+                fmt::format("venous pH {} speaks against a primary respiratory alkalosis; {}",
+                            venous_ph_.words(), limits));
+        } else if (venous_ph_.above(alkalaemia) == Answer::yes) {
+            say(GateStatus::caution,
+                fmt::format(
+                    "venous pH {} is above {}, and arterial pH lies a little higher still: think of a "
+                    "primary respiratory alkalosis; {}",
+                    venous_ph_.words_beside(alkalaemia), ph(alkalaemia), limits));
+        } else {
+            say(GateStatus::in_scope,
+                fmt::format("venous pH {} does not exclude a respiratory alkalosis, which also lowers "
+                            "bicarbonate; {}",
+                            venous_ph_.words(), limits));
         }
     }
 
@@ -250,131 +306,242 @@ class Examination {
             const bool from_total_co2 = std::find(from.begin(), from.end(), "serum_total_co2") != from.end();
             if (measured || from_total_co2) {
                 compare_gas(id == "arterial_bicarbonate" ? "arterial bicarbonate" : "serum bicarbonate",
-                            bicarbonate.point());
+                            bicarbonate);
             }
         }
     }
 
-    void compare_gas(std::string_view what, double bicarbonate) {
+    void compare_gas(std::string_view what, const Known& bicarbonate) {
         const double implied = chemistry::bicarbonate_from_gas(ph_.point(), pco2_.point());
-        const double implied_ph = chemistry::ph_from_gas(bicarbonate, pco2_.point());
-        const double miss = std::abs(bicarbonate - implied);
+        const double implied_ph = chemistry::ph_from_gas(bicarbonate.point(), pco2_.point());
+        const double miss = std::abs(bicarbonate.point() - implied);
         const double ph_miss = std::abs(ph_.point() - implied_ph);
         const auto both_exceed = [&](double times) {
-            return miss > times * settings_.gas_bicarbonate.value && ph_miss > times * settings_.gas_ph.value;
+            const auto exceeds = [times](double value, double limit) {
+                return detail::is_above(Interval::point(value), times * limit) == Answer::yes;
+            };
+            return exceeds(miss, settings_.gas_bicarbonate.value) && exceeds(ph_miss, settings_.gas_ph.value);
         };
         if (!both_exceed(1.0)) {
             return;
         }
+        gas_agrees_ = false;
         const bool gross = both_exceed(2.0);
         say(gross ? GateStatus::out_of_scope : GateStatus::caution,
             fmt::format("the blood gas {}: pH {} and pCO2 {} give a bicarbonate of {}, but {} is {} "
-                        "(tolerated: {} and "
-                        "pH {})",
+                        "(tolerated: {} and pH {}); check the transcription or repeat the gas",
                         gross ? "contradicts itself" : "does not quite agree", ph_.words(), pco2_.words(),
-                        mmol(implied), what, mmol(bicarbonate), mmol(settings_.gas_bicarbonate.value),
-                        number(settings_.gas_ph.value)));
+                        detail::decimal(implied, {0, 1}) + " mmol/L", what, bicarbonate.words(),
+                        mmol(settings_.gas_bicarbonate.value), ph(settings_.gas_ph.value)));
     }
 
     void gap() {
+        Answer high = Answer::unknown;
         if (corrected_) {
-            corrected_gap();
+            high = corrected_gap();
         } else if (gap_) {
-            uncorrected_gap();
+            high = uncorrected_gap();
         } else {
             say(GateStatus::caution,
                 "the anion gap is not known (sodium, chloride and bicarbonate are needed): a normal gap was "
                 "not confirmed");
+        }
+        measured_acid("serum_lactate", "lactate", settings_.lactate_high.value, "lactic acidosis", high);
+        measured_acid("serum_beta_hydroxybutyrate", "beta-hydroxybutyrate", settings_.ketones_high.value,
+                      "ketoacidosis", high);
+        if (corrected_ || gap_) {
+            delta_ratio();
+        }
+    }
+
+    /// A ratio is judged as it is shown, to two decimals.
+    void delta_ratio() {
+        const Known ratio(quantities_, "delta_ratio");
+        if (!ratio.is_point()) {
             return;
         }
-        if (const Known ratio(quantities_, "delta_ratio"); ratio.is_point()) {
-            const double share = 100.0 * ratio.point();
-            say(GateStatus::in_scope,
-                ratio.point() > 0.0
-                    ? fmt::format(
-                          "delta ratio {}: the rise of the gap accounts for {} % of the fall in bicarbonate",
-                          fmt::format("{:.2f}", ratio.point()), fmt::format("{:.0f}", share))
-                    : fmt::format("delta ratio {}: the gap has not risen",
-                                  fmt::format("{:.2f}", ratio.point())));
+        const double shown = std::round(100.0 * ratio.point()) / 100.0;
+        std::string meaning = "the gap has not risen";
+        if (shown > 1.0) {
+            meaning =
+                "the gap has risen by more than bicarbonate has fallen: think of a metabolic alkalosis "
+                "beside it, or a high bicarbonate before";
+        } else if (ratio.point() > 0.0) {
+            meaning = fmt::format("the rise of the gap accounts for {:.0f} % of the fall in bicarbonate",
+                                  100.0 * ratio.point());
+        }
+        say(GateStatus::in_scope, fmt::format("delta ratio {}: {}", ratio.words(), meaning));
+    }
+
+    /// An unmeasured acid that was measured after all. With a high gap it is the answer, and not one of the
+    /// tables'.
+    void measured_acid(std::string_view id, std::string_view name, double limit, std::string_view disorder,
+                       Answer gap_is_high) {
+        const Known acid(quantities_, id);
+        const Answer above = acid.above(limit);
+        if (!acid || above == Answer::no) {
+            return;
+        }
+        const std::string finding = fmt::format("{} {} {} above {}", name, acid.words_beside(limit),
+                                                above == Answer::yes ? "is" : "may be", mmol(limit));
+        if (above == Answer::yes && gap_is_high == Answer::yes) {
+            say(GateStatus::out_of_scope,
+                fmt::format("{}: a {}, which these tables do not weigh", finding, disorder));
+        } else if (gap_is_high == Answer::no) {
+            say(GateStatus::caution,
+                fmt::format("{} though the gap is not high: a {} beside it is not excluded", finding,
+                            disorder));
+        } else {
+            say(GateStatus::caution, fmt::format("{}: a {} is not excluded", finding, disorder));
         }
     }
 
-    bool gfr_is_reduced() const { return gfr_.below(settings_.gfr_reduced_below.value) == Answer::yes; }
-    bool gfr_is_not_reduced() const { return gfr_.below(settings_.gfr_reduced_below.value) == Answer::no; }
-
-    std::string reduced_gfr_in_words() const {
-        return fmt::format("GFR {} is below {}", gfr_.words(),
-                           amount(settings_.gfr_reduced_below.value, "mL/min/{1.73_m2}"));
+    /// `lactate, ketones and toxins`, without those that were measured and are not raised.
+    std::string acids_to_exclude() const {
+        std::vector<std::string> acids;
+        if (Known(quantities_, "serum_lactate").above(settings_.lactate_high.value) != Answer::no) {
+            acids.emplace_back("lactate");
+        }
+        if (Known(quantities_, "serum_beta_hydroxybutyrate").above(settings_.ketones_high.value) !=
+            Answer::no) {
+            acids.emplace_back("ketones");
+        }
+        acids.emplace_back("toxins");
+        return detail::listed_in_words(acids);
     }
 
-    void corrected_gap() {
+    /// Why the GFR of this case is not valid; empty when it is.
+    std::string why_gfr_is_barred() const {
+        for (const GfrCondition& condition : settings_.gfr_conditions) {
+            const auto seen = panel_.observed.find(condition.feature);
+            const bool barred = seen == panel_.observed.end() ? condition.set_aside_when_unknown
+                                                              : seen->second.level != condition.level;
+            if (barred) {
+                return condition.otherwise;
+            }
+        }
+        return {};
+    }
+
+    Answer gfr_is_reduced() const {
+        return gfr_barred_.empty() ? gfr_.below(settings_.gfr_reduced_below.value) : Answer::unknown;
+    }
+
+    std::string gfr_words() const {
+        const bool estimated = gfr_.quantity().origin == Origin::computed;
+        return fmt::format("GFR {}{}", gfr_.words_beside(settings_.gfr_reduced_below.value),
+                           estimated ? " (estimated from creatinine)" : "");
+    }
+
+    std::string reduced_gfr_words() const {
+        return fmt::format("{} is below {}", gfr_words(),
+                           gfr_.limit_words(settings_.gfr_reduced_below.value));
+    }
+
+    /// Why it is not known whether GFR is reduced.
+    std::string unknown_gfr_words() const {
+        if (!gfr_) {
+            return "GFR is not known";
+        }
+        if (!gfr_barred_.empty()) {
+            return fmt::format("{} is not used ({})", gfr_words(), gfr_barred_);
+        }
+        return fmt::format("{} is on either side of {}", gfr_words(),
+                           gfr_.limit_words(settings_.gfr_reduced_below.value));
+    }
+
+    /// @returns whether the gap is high
+    Answer corrected_gap() {
         const double normal_to = settings_.gap_normal_to.value;
         const double high_from = settings_.gap_high_from.value;
-        const std::string what = fmt::format("anion gap corrected for albumin {}", corrected_.words());
-        if (corrected_.above(normal_to) == Answer::no) {
-            say(GateStatus::in_scope, fmt::format("{} is normal, not above {}", what, mmol(normal_to)));
-        } else if (corrected_.above(high_from) == Answer::yes) {
-            high_gap(fmt::format("{} is above {}", what, mmol(high_from)));
-        } else if (gfr_is_reduced()) {
+        const auto what = [this](double limit) {
+            return fmt::format("anion gap corrected for albumin {}", corrected_.words_beside(limit));
+        };
+        if (corrected_.below(low_gap) == Answer::yes) {
+            remark_low_gap(what(low_gap), "lithium");
+        } else if (corrected_.above(normal_to) == Answer::no) {
             say(GateStatus::in_scope,
-                fmt::format("{} is above {} but not clearly above {}; {}, which may account for it", what,
-                            mmol(normal_to), mmol(high_from), reduced_gfr_in_words()));
+                fmt::format("{} is normal, not above {}", what(normal_to), mmol(normal_to)));
+        } else if (corrected_.above(high_from) == Answer::yes) {
+            high_gap(fmt::format("{} is above {}", what(high_from), mmol(high_from)));
         } else {
-            say(GateStatus::caution,
-                fmt::format("{} is above {} but not clearly above {}: a normal gap was not confirmed", what,
-                            mmol(normal_to), mmol(high_from)));
+            const std::string finding = fmt::format("{} is above {} but not clearly above {}",
+                                                    what(normal_to), mmol(normal_to), mmol(high_from));
+            between_limits(
+                corrected_.above(normal_to) == Answer::yes
+                    ? finding
+                    : fmt::format("{} lies on either side of {}", what(normal_to),
+                                  mmol(corrected_.above(high_from) == Answer::no ? normal_to : high_from)));
         }
-        remark_low_gap(corrected_, what);
+        return corrected_.above(high_from);
+    }
+
+    void between_limits(const std::string& finding) {
+        if (gfr_is_reduced() == Answer::yes) {
+            say(GateStatus::in_scope,
+                fmt::format("{}; {}, which may account for it", finding, reduced_gfr_words()));
+        } else if (gfr_is_reduced() == Answer::unknown && gfr_) {
+            say(GateStatus::caution,
+                fmt::format("{}: a normal gap was not confirmed, and {}", finding, unknown_gfr_words()));
+        } else {
+            say(GateStatus::caution, finding + ": a normal gap was not confirmed");
+        }
     }
 
     void high_gap(const std::string& finding) {
-        if (gfr_is_reduced()) {
-            say(GateStatus::in_scope,
-                fmt::format(
-                    "{}; {}: renal failure, which raises the gap, is among the causes, but other unmeasured "
-                    "acids (lactate, ketones, toxins) must be excluded",
-                    finding, reduced_gfr_in_words()));
-        } else if (gfr_is_not_reduced()) {
-            say(GateStatus::out_of_scope, fmt::format("{} and GFR {} is not reduced: a high-gap acidosis "
-                                                      "(lactate, ketones, toxins), which these "
-                                                      "tables do not weigh",
-                                                      finding, gfr_.words()));
-        } else {
-            say(GateStatus::caution,
-                fmt::format("{} and GFR is not known: lactate, ketones and toxins must be excluded",
-                            finding));
+        switch (gfr_is_reduced()) {
+            case Answer::yes:
+                say(GateStatus::caution,
+                    fmt::format("{}; {}: renal failure is among the causes, but {} must be excluded", finding,
+                                reduced_gfr_words(), acids_to_exclude()));
+                return;
+            case Answer::no:
+                say(GateStatus::out_of_scope,
+                    fmt::format("{} and {} is not reduced: a high-gap acidosis (lactate, ketones, toxins), "
+                                "which these tables do not weigh",
+                                finding, gfr_words()));
+                return;
+            case Answer::unknown:
+                say(GateStatus::caution, fmt::format("{} and {}: {} must be excluded", finding,
+                                                     unknown_gfr_words(), acids_to_exclude()));
+                return;
         }
     }
 
     /// Albumin is unknown. A low one would hide a raised gap, a high one feign it: a gap within that doubt of
-    /// a limit is a caution, one that is clear of it is read as it stands.
-    void uncorrected_gap() {
+    /// a limit is a caution, one that is clear of it is read as it stands. @returns whether the gap is high
+    Answer uncorrected_gap() {
         const double normal_to = settings_.gap_normal_to.value;
         const double high_from = settings_.gap_high_from.value;
         const double doubt = settings_.chemistry.albumin_slope * albumin_doubt;
-        const std::string what =
-            fmt::format("anion gap {}, not corrected since albumin is not known,", gap_.words());
+        const auto what = [this](double limit) {
+            return fmt::format("anion gap {}, not corrected since albumin is not known,",
+                               gap_.words_beside(limit));
+        };
+        if (gap_.below(low_gap) == Answer::yes) {
+            remark_low_gap(what(low_gap), "a low albumin, lithium");
+            return Answer::no;
+        }
         if (gap_.above(normal_to - doubt) == Answer::no) {
             say(GateStatus::in_scope,
-                fmt::format("{} is normal, not above {}; it would be higher if albumin is low", what,
-                            mmol(normal_to)));
-        } else if (gap_.above(high_from + doubt) == Answer::yes) {
-            high_gap(fmt::format("{} is above {}", what, mmol(high_from)));
-        } else {
-            say(GateStatus::caution,
-                fmt::format("{} lies too near the limits ({} and {}) to be read without albumin", what,
-                            mmol(normal_to), mmol(high_from)));
+                fmt::format("{} is normal, not above {}; it would be higher if albumin is low",
+                            what(normal_to), mmol(normal_to)));
+            return Answer::no;
         }
-        remark_low_gap(gap_, what);
+        if (gap_.above(high_from + doubt) == Answer::yes) {
+            high_gap(fmt::format("{} is above {}", what(high_from), mmol(high_from)));
+            return Answer::yes;
+        }
+        say(GateStatus::caution,
+            fmt::format("{} lies too near the limits ({} and {}) to be read without albumin", what(high_from),
+                        mmol(normal_to), mmol(high_from)));
+        return Answer::unknown;
     }
 
-    void remark_low_gap(const Known& gap, const std::string& what) {
-        if (gap.below(low_gap) == Answer::yes) {
-            say(GateStatus::in_scope,
-                fmt::format(
-                    "{} is below {}: think of lithium, bromide, a paraprotein, or an error of measurement",
-                    what, mmol(low_gap)));
-        }
+    void remark_low_gap(const std::string& what, std::string_view first) {
+        say(GateStatus::caution,
+            fmt::format("{} is below {}: think of {}, bromide, a paraprotein, or an error of measurement",
+                        what, mmol(low_gap), first));
     }
 
     const Panel& panel_;
@@ -383,10 +550,13 @@ class Examination {
     Known bicarbonate_;
     Known ph_;
     Known pco2_;
+    Known venous_ph_;
     Known expected_pco2_;
     Known gfr_;
     Known gap_;
     Known corrected_;
+    std::string gfr_barred_;
+    bool gas_agrees_ = true;
     std::vector<std::pair<GateStatus, std::string>> reasons_;
 };
 
@@ -406,6 +576,19 @@ std::string_view to_string(GateStatus status) noexcept {
 
 GateResult gate(const Panel& panel, const Quantities& quantities, const GateSettings& settings) {
     return Examination(panel, quantities, settings).run();
+}
+
+std::vector<std::string> gate_inputs(const GateSettings& settings) {
+    std::vector<std::string> ids(inputs.begin(), inputs.end());
+    for (const std::string& feature : {settings.alkali_feature, settings.pregnancy_feature}) {
+        if (!feature.empty()) {
+            ids.push_back(feature);
+        }
+    }
+    for (const GfrCondition& condition : settings.gfr_conditions) {
+        ids.push_back(condition.feature);
+    }
+    return ids;
 }
 
 }  // namespace steelyard::likelihoods

@@ -29,8 +29,8 @@ GivenRow read_row(const document::Node& node, const std::string& cause, const Ta
                   const SetNames& names, document::Diagnostics& faults);
 
 /// Compiles the whole rows among `given` into `table.rows` (in order of `given`), ratios after what they
-/// refer to, and keeps judged rows at or above the table's `least`. @param study_mix  shares of the rows'
-/// causes, when the table has them
+/// refer to, and raises bands of judged rows to the table's `least` before normalising. @param study_mix
+/// shares of the rows' causes, when the table has them
 void compile_rows(std::vector<GivenRow>& given, const std::optional<std::vector<double>>& study_mix,
                   EvidenceTable& table, document::Diagnostics& faults);
 

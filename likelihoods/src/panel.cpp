@@ -191,10 +191,17 @@ std::optional<Interval> read_interval(std::string_view name, const EntryText& en
             likely_slip(entry, unit_text, target));
         return std::nullopt;
     }
-    if (below) {
-        return Interval{target.low, value, false, open && value != target.low};
+    if (value == (below ? target.low : target.high)) {
+        return Interval::point(value);  // `<= 0` of what cannot be below 0
     }
-    return Interval{value, target.high, open && value != target.high, false};
+    Interval limit;
+    limit.low = below ? target.low : value;
+    limit.high = below ? value : target.high;
+    limit.low_open = open && !below;
+    limit.high_open = open && below;
+    limit.low_is_floor = below;
+    limit.high_is_ceiling = !below;
+    return limit;
 }
 
 std::vector<std::string> quantity_names() {

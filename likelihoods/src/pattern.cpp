@@ -20,22 +20,6 @@ using detail::bands_of;
 using detail::BandSpan;
 using detail::in_sentence;
 
-/// Quantities that the gate looks at and what its gap is made of, whatever the tables do.
-constexpr std::array<std::string_view, 14> gate_quantities = {"serum_bicarbonate",
-                                                              "serum_total_co2",
-                                                              "arterial_ph",
-                                                              "arterial_pco2",
-                                                              "arterial_bicarbonate",
-                                                              "serum_sodium",
-                                                              "serum_chloride",
-                                                              "serum_albumin",
-                                                              "anion_gap",
-                                                              "anion_gap_corrected",
-                                                              "delta_ratio",
-                                                              "bicarbonate_from_gas",
-                                                              "expected_pco2",
-                                                              "gfr"};
-
 /// What is known of one member of a joint table.
 struct Member {
     bool known = false;
@@ -76,11 +60,13 @@ class PatternReader {
                 locate_joint(table, reading);
                 break;
         }
-        if (reading.use == Use::missing) {
-            return reading;
-        }
         const detail::Applicability applicability =
             detail::check_conditions(set_, table.usable_when, panel_, quantities_);
+        if (reading.use == Use::missing) {
+            // Asking for it would be in vain as long as the case stands as it does.
+            reading.barred = applicability.fails ? applicability.why_not : "";
+            return reading;
+        }
         if (!applicability.usable) {
             reading.use = Use::set_aside;
             reading.why_not = applicability.why_not;
@@ -249,21 +235,34 @@ class PatternReader {
         return found == pattern_.findings.end() ? nullptr : &*found;
     }
 
-    /// Of each list of alternatives only the first that can be read is read.
+    /// Of each list of alternatives only the first that can be read is read; the others of the list are set
+    /// aside, or barred when they are missing.
     void prefer() {
         for (const OneOf& list : set_.one_of) {
-            const EvidenceTable* preferred = nullptr;
+            std::vector<FindingReading*> members;
             for (const std::string& finding : list.findings) {
-                FindingReading* reading = find(finding);
-                if (reading == nullptr || reading->use != Use::read) {
+                if (FindingReading* reading = find(finding)) {
+                    members.push_back(reading);
+                }
+            }
+            const auto first = std::find_if(members.begin(), members.end(), [](const FindingReading* member) {
+                return member->use == Use::read;
+            });
+            if (first == members.end()) {
+                continue;
+            }
+            const std::string reason =
+                fmt::format("the {} is read in its place", in_sentence(set_.tables[(*first)->table].title));
+            for (FindingReading* member : members) {
+                if (member == *first) {
                     continue;
                 }
-                if (preferred == nullptr) {
-                    preferred = &set_.tables[reading->table];
-                    continue;
+                if (member->use == Use::read) {
+                    member->use = Use::set_aside;
+                    member->why_not = reason;
+                } else if (member->use == Use::missing && member->barred.empty()) {
+                    member->barred = reason;
                 }
-                reading->use = Use::set_aside;
-                reading->why_not = fmt::format("the {} is read in its place", in_sentence(preferred->title));
             }
         }
     }
@@ -307,13 +306,12 @@ class PatternReader {
                 mark(looked_at, condition.subject);
             }
         }
-        for (const std::string_view id : gate_quantities) {
+        for (const std::string& id : gate_inputs(set_.gate)) {
             mark(looked_at, id);
         }
         for (const UrgentLimit& limit : set_.urgent) {
             mark(looked_at, limit.quantity);
         }
-        mark(looked_at, set_.gate.alkali_feature);
         const auto list = [&](const auto& entries) {
             for (const auto& [id, entry] : entries) {
                 if (!looked_at.contains(id)) {

@@ -30,7 +30,7 @@ constexpr Limit GateSettings::*no_limit = nullptr;
 constexpr double ChemistrySettings::*no_coefficient = nullptr;
 
 // Ranges are wide on purpose: they catch a wrong unit or a lost decimal point, not a clinic's judgement.
-constexpr std::array<GateKey, 16> gate_keys = {{
+constexpr std::array<GateKey, 19> gate_keys = {{
     {"bicarbonate_low", "mmol/L", 10.0, 40.0, &GateSettings::bicarbonate_low, no_coefficient},
     {"ph_low", "[pH]", 7.0, 7.6, &GateSettings::ph_low, no_coefficient},
     {"ph_high", "[pH]", 7.2, 7.8, &GateSettings::ph_high, no_coefficient},
@@ -41,6 +41,9 @@ constexpr std::array<GateKey, 16> gate_keys = {{
     {"gas_bicarbonate", "mmol/L", 0.0, 20.0, &GateSettings::gas_bicarbonate, no_coefficient},
     {"gas_ph", "[pH]", 0.0, 1.0, &GateSettings::gas_ph, no_coefficient},
     {"age_least", "a", 0.0, 120.0, &GateSettings::age_least, no_coefficient},
+    {"pco2_high", "mm[Hg]", 20.0, 100.0, &GateSettings::pco2_high, no_coefficient},
+    {"lactate_high", "mmol/L", 0.5, 30.0, &GateSettings::lactate_high, no_coefficient},
+    {"ketones_high", "mmol/L", 0.1, 30.0, &GateSettings::ketones_high, no_coefficient},
     {"albumin_reference", "g/L", 20.0, 60.0, no_limit, &ChemistrySettings::albumin_reference},
     {"albumin_slope", "1", 0.0, 1.0, no_limit, &ChemistrySettings::albumin_slope},
     {"anion_gap_reference", "mmol/L", 0.0, 40.0, no_limit, &ChemistrySettings::anion_gap_reference},
@@ -96,10 +99,52 @@ void read_gate_key(const Node& node, const GateKey& key, TableSet& set, Diagnost
     }
 }
 
+/// A feature of the set that can be `present`; bad_gate at the node otherwise. `none` says openly that the
+/// set has no such feature, and gives an empty name.
+std::string read_feature_name(const Node& node, const std::string& what, const TableSet& set,
+                              Diagnostics& faults) {
+    const std::optional<std::string> id = document::read_identifier(node, what, faults);
+    if (!id || *id == "none") {
+        return {};
+    }
+    const FeatureVocabulary vocabulary = set.vocabulary();
+    const auto found = vocabulary.levels.find(*id);
+    if (found == vocabulary.levels.end()) {
+        std::vector<std::string> known;
+        for (const auto& [name, levels] : vocabulary.levels) {
+            known.push_back(name);
+        }
+        faults.add(node.where(), Code::bad_gate, fmt::format("{}: {} is no feature of this set", what, *id),
+                   name_hint(*id, known));
+        return {};
+    }
+    if (!contains(found->second, "present")) {
+        faults.add(node.where(), Code::bad_gate, fmt::format("{}: {} has no level `present`", what, *id),
+                   "name a feature whose levels are present and absent");
+        return {};
+    }
+    return *id;
+}
+
+/// What makes a GFR invalid for its own table makes it invalid for the gate.
+void take_gfr_conditions(TableSet& set) {
+    const EvidenceTable* table = set.find_table("gfr");
+    if (table == nullptr) {
+        return;
+    }
+    for (const Condition& condition : table->usable_when) {
+        if (condition.is_feature) {
+            set.gate.gfr_conditions.push_back(
+                {condition.subject, condition.level, condition.otherwise, condition.set_aside_when_unknown});
+        }
+    }
+}
+
 }  // namespace
 
 void read_gate(const Node& node, TableSet& set, Diagnostics& faults) {
     const std::size_t before = faults.size();
+    take_gfr_conditions(set);
     StrictMap map(node, "gate", faults);
     for (const GateKey& key : gate_keys) {
         if (const Node* entry = map.required(key.key)) {
@@ -107,22 +152,10 @@ void read_gate(const Node& node, TableSet& set, Diagnostics& faults) {
         }
     }
     if (const Node* alkali = map.required("alkali_feature")) {
-        // `none` says openly that this set has no such feature.
-        const std::optional<std::string> id =
-            document::read_identifier(*alkali, "gate.alkali_feature", faults);
-        if (id && *id != "none") {
-            const FeatureVocabulary vocabulary = set.vocabulary();
-            if (!vocabulary.levels.contains(*id)) {
-                std::vector<std::string> known;
-                for (const auto& [name, levels] : vocabulary.levels) {
-                    known.push_back(name);
-                }
-                faults.add(alkali->where(), Code::unknown_feature,
-                           fmt::format("gate.alkali_feature: {} is no feature of this set", *id),
-                           name_hint(*id, known));
-            }
-            set.gate.alkali_feature = *id;
-        }
+        set.gate.alkali_feature = read_feature_name(*alkali, "gate.alkali_feature", set, faults);
+    }
+    if (const Node* pregnancy = map.optional("pregnancy_feature")) {
+        set.gate.pregnancy_feature = read_feature_name(*pregnancy, "gate.pregnancy_feature", set, faults);
     }
     map.finish();
     if (faults.size() != before || !map.usable()) {

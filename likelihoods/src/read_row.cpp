@@ -316,6 +316,9 @@ class RowReader {
         }
         given.numbers = *ratios;
         given.log_sd.assign(ratios->size(), 0.0);
+        for (const double ratio : *ratios) {
+            given.row.published.push_back({ratio, ratio, ratio});
+        }
         std::vector<std::string> words;
         for (const Node& item : list.items) {
             words.push_back(item.text);
@@ -350,6 +353,7 @@ class RowReader {
                                 what, words[i]));
                 continue;
             }
+            given.row.published[i] = {given.numbers[i], (*ends)[0], (*ends)[1]};
             given.log_sd[i] = std::log((*ends)[1] / (*ends)[0]) / (2.0 * normal_975);
             words[i] += fmt::format(" ({} to {})", ranges[i].items[0].text, ranges[i].items[1].text);
         }

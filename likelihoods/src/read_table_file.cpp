@@ -12,6 +12,24 @@ using document::Diagnostics;
 using document::Node;
 using document::StrictMap;
 
+namespace {
+
+/// Raising must leave a judged row most of its own shape: all bands raised together may hold less than half
+/// of it.
+void check_least(const EvidenceTable& table, const document::SourcePosition& where, Diagnostics& faults) {
+    constexpr double most_raised = 0.5;
+    const auto bands = static_cast<double>(table.bands());
+    if (table.least * bands >= most_raised) {
+        faults.add(where, Code::out_of_range,
+                   fmt::format("least {:.6g} times {} bands is {:.6g}, but must be below {:.6g}", table.least,
+                               table.bands(), table.least * bands, most_raised),
+                   fmt::format("a larger least would flatten judged rows; give one below {:.6g}",
+                               most_raised / bands));
+    }
+}
+
+}  // namespace
+
 TableFile begin_table_file(const Node& root, const std::string& file_stem, Diagnostics& faults) {
     constexpr std::array<std::string_view, 3> burdens = {"bedside", "routine", "specialised"};
     constexpr double greatest_least = 0.2;
@@ -35,7 +53,8 @@ TableFile begin_table_file(const Node& root, const std::string& file_stem, Diagn
     table.burden = map.optional_choice("burden", burdens).value_or("routine");
     table.caution = map.optional_text("caution").value_or("");
     table.note = map.optional_text("note").value_or("");
-    if (const Node* least = map.optional("least")) {
+    const Node* least = map.optional("least");
+    if (least != nullptr) {
         const std::optional<double> value =
             document::read_number(*least, "least", faults, 0.0, greatest_least);
         if (value && *value == 0.0) {
@@ -46,6 +65,9 @@ TableFile begin_table_file(const Node& root, const std::string& file_stem, Diagn
     }
     if (!table.finding.empty()) {
         read_bands(file, faults);
+    }
+    if (file.bands_known) {
+        check_least(table, least != nullptr ? least->where() : file.finding_at, faults);
     }
     return file;
 }

@@ -8,7 +8,6 @@
 #include "steelyard/document/diagnostic.hpp"
 #include "steelyard/likelihoods/analyte.hpp"
 #include "steelyard/likelihoods/derived.hpp"
-#include "steelyard/likelihoods/evidence_markdown.hpp"
 #include "steelyard/likelihoods/read_table_set.hpp"
 #include "steelyard/priors/prior_set.hpp"
 
@@ -42,19 +41,6 @@ TEST(Formats, ListEveryAnalyteAndDerivedQuantity) {
     for (const likelihoods::DerivedQuantity& quantity : likelihoods::derived_quantities()) {
         EXPECT_NE(text.find("`" + std::string(quantity.id) + "`"), std::string::npos) << quantity.id;
     }
-}
-
-TEST(Evidence, IsGeneratedFromTheShippedTables) {
-    const std::string begin = "<!-- generated: begin -->\n";
-    const std::string end = "<!-- generated: end -->";
-    const std::string text = doc("docs/evidence.md");
-    const std::size_t from = text.find(begin);
-    const std::size_t to = text.find(end);
-    ASSERT_NE(from, std::string::npos);
-    ASSERT_NE(to, std::string::npos);
-    const std::string now = likelihoods::evidence_markdown(likelihoods::open_table_set("adult"));
-    EXPECT_EQ(text.substr(from + begin.size(), to - from - begin.size()), now)
-        << "run docs/refresh to bring docs/evidence.md up to date";
 }
 
 TEST(Readme, ShowsTheReportThatTheProgramPrints) {

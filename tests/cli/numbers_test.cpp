@@ -40,8 +40,8 @@ TEST(SignedFixed, HasASignExceptAtZero) {
 
 TEST(InWords, NamesLimitsAsLimits) {
     EXPECT_EQ(in_words(likelihoods::Interval::point(2.8)), "2.8");
-    EXPECT_EQ(in_words({0.0, 5.0, false, true}), "below 5");
-    EXPECT_EQ(in_words({20.0, 100.0, true, false}), "above 20");
+    EXPECT_EQ(in_words({0.0, 5.0, false, true, true, false}), "below 5");
+    EXPECT_EQ(in_words({20.0, 100.0, true, false, false, true}), "above 20");
 }
 
 TEST(UnitShown, IsTheTradesSpelling) {
@@ -59,6 +59,9 @@ TEST(Decibans, AgreeWithTheTunnyReport) {
 TEST(OddsInWords, KeepsTheLargerSideToTwoDigits) {
     EXPECT_EQ(odds_in_words(3.0), "3 to 1");
     EXPECT_EQ(odds_in_words(1.0 / 3.0), "1 to 3");
+    EXPECT_EQ(odds_in_words(99.4), "99 to 1");
+    EXPECT_EQ(odds_in_words(99.7), "100 to 1");
+    EXPECT_EQ(odds_in_words(100.0), "100 to 1");
     EXPECT_EQ(odds_in_words(1234.0), "1200 to 1");
     EXPECT_EQ(odds_in_words(2.5e9), "over a million to 1");
 }

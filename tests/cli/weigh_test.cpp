@@ -258,7 +258,8 @@ TEST(Weigh, WritesAFileWholeAndPrintsNothing) {
     const Outcome bad =
         run({"weigh", "-", "--out", dir.file("report.txt")}, "case: x1\nserum: {potassium: 2.8}\n");
     EXPECT_EQ(bad.code, 3);
-    EXPECT_NE(text_of(dir.file("report.txt")), "") << "a failed run must leave the older result alone";
+    EXPECT_EQ(text_of(dir.file("report.txt")), run({"weigh", "-"}, classic_case).out)
+        << "a failed run must leave the older result alone";
 }
 
 TEST(Weigh, GivesTheSameBytesEveryTime) {
@@ -266,19 +267,96 @@ TEST(Weigh, GivesTheSameBytesEveryTime) {
               run({"weigh", "-", "--as", "json"}, classic_case).out);
 }
 
+/// The shipped tables in a folder of the test's own, with some of their text replaced.
+std::string altered_tables(const WorkDir& dir, const std::string& file, const std::string& from,
+                           const std::string& to) {
+    const std::filesystem::path folder = dir.path() / "tables";
+    std::filesystem::copy(STEELYARD_SOURCE_DIR "/likelihoods/tables/adult", folder);
+    std::string text = text_of(folder / file);
+    const std::size_t at = text.find(from);
+    EXPECT_NE(at, std::string::npos) << from;
+    text.replace(at, from.size(), to);
+    dir.write("tables/" + file, text);
+    return folder.string();
+}
+
 TEST(Weigh, ShowsHostileTextAsTextOnly) {
-    const std::string text = "case: \"larkmoor-\\x1b[31m\\u202e900\"\nserum: {potassium: 3.1 mmol/L}\n";
-    const Outcome outcome = run({"weigh", "-"}, text);
-    EXPECT_EQ(outcome.out.find('\x1b'), std::string::npos);
-    EXPECT_EQ(outcome.out.find("\xe2\x80\xae"), std::string::npos);
+    const std::string mark = "\xe2\x80\xae";  // right-to-left override, U+202E
+    std::string text = classic_case;
+    text.replace(text.find("larkmoor-900"), 12, "\"larkmoor-" + mark + "<b>900\"");
+    const WorkDir dir;
+    const std::string tables =
+        altered_tables(dir, "set.yaml", "title: Classic distal", "title: Classic" + mark + " distal");
+    for (const std::string command : {"weigh", "tables", "priors"}) {
+        const Outcome outcome = command == "weigh"    ? run({"weigh", "-", "--tables", tables}, text)
+                                : command == "tables" ? run({"tables", "show", tables})
+                                                      : run({"priors", "show", "--tables", tables});
+        EXPECT_EQ(outcome.code, 0) << outcome.err;
+        EXPECT_EQ(outcome.out.find(mark), std::string::npos) << command;
+        EXPECT_NE(outcome.out.find("\\u202e"), std::string::npos) << command;
+    }
+    // An escape sequence does not even get in.
+    EXPECT_EQ(run({"weigh", "-"}, "case: \"larkmoor-\\x1b[31m\"\n").code, 3);
+    EXPECT_EQ(run({"weigh", "-"}, "case: larkmoor-\x1b[31m\n").code, 3);
+}
+
+TEST(Weigh, TakesAFolderWhoseNameIsNotUtf8) {
+    const WorkDir dir;
+    std::filesystem::copy(STEELYARD_SOURCE_DIR "/likelihoods/tables/adult", dir.path() / "t\xff");
+    const Outcome outcome = run({"weigh", "-", "--as", "json", "--tables", dir.file("t\xff")}, classic_case);
+    EXPECT_EQ(outcome.code, 0) << outcome.err;
+    EXPECT_EQ(Json::parse(outcome.out).size(), 1U);
+}
+
+std::string many_cases(int count) {
+    std::string text;
+    for (int i = 0; i < count; ++i) {
+        text += "- {case: larkmoor-" + std::to_string(i) + ", serum: {potassium: 3.1 mmol/L}}\n";
+    }
+    return text;
 }
 
 TEST(Weigh, TreatsAClosedPipeAsSuccess) {
     const WorkDir dir;
-    const std::string path = dir.write("case.yaml", classic_case);
+    // Far more than a pipe holds, so that the writer is still writing when the reader has gone.
+    const std::string path = dir.write("cases.yaml", many_cases(200));
     const std::string command = std::string("bash -c 'set -o pipefail; " STEELYARD_PROGRAM " weigh ") + path +
                                 " | head -c 1 >/dev/null'";
     EXPECT_EQ(std::system(command.c_str()), 0);  // NOLINT: the test's own words
+}
+
+TEST(Weigh, SaysSoWhenStandardOutputIsFull) {
+    const WorkDir dir;
+    const std::string path = dir.write("case.yaml", classic_case);
+    const std::string command = std::string("bash -c '" STEELYARD_PROGRAM " weigh ") + path +
+                                " >/dev/full 2>" + dir.file("err") + "; test $? -eq 2'";
+    EXPECT_EQ(std::system(command.c_str()), 0);  // NOLINT: the test's own words
+    EXPECT_NE(text_of(dir.file("err")).find("cannot write the result"), std::string::npos);
+}
+
+TEST(Weigh, RefusesACompositeWithoutItsParts) {
+    const WorkDir dir;
+    const std::string priors = dir.write("priors.yaml", R"(format: steelyard.prior-set/1
+title: Larkmoor
+given_as: weights
+causes:
+  proximal: {weight: 1}
+  low_aldosterone_renal_failure: {weight: 1}
+)");
+    const Outcome outcome = run({"weigh", "-", "--priors", priors}, classic_case);
+    EXPECT_EQ(outcome.code, 3);
+    EXPECT_NE(outcome.err.find(priors + ":6:3: error[composite-without-parts]"), std::string::npos)
+        << outcome.err;
+}
+
+TEST(Weigh, ShowsALimitAsALimit) {
+    const std::string text = "case: larkmoor-905\nserum: {potassium: <2.0 mmol/L, bicarbonate: 14 mmol/L}\n";
+    const std::string report = run({"weigh", "-"}, text).out;
+    EXPECT_NE(report.find("Serum potassium below 2.0 mmol/L is at or below 2.8 mmol/L"), std::string::npos)
+        << report;
+    const std::string maybe =
+        run({"weigh", "-"}, "case: larkmoor-905\nserum: {potassium: <3.0 mmol/L}\n").out;
+    EXPECT_NE(maybe.find("may be at or below"), std::string::npos) << maybe;
 }
 
 TEST(Weigh, ShowsWhatNoTableReads) {

@@ -57,6 +57,17 @@ TEST(ShapeFromRest, RestoresTheRowsUpToOneFactorABand) {
     EXPECT_LE((shape.colwise() * share - two_rows()).abs().maxCoeff(), 1e-15);
 }
 
+TEST(LogSlopeFromRest, IsTheDerivativeOfTheShape) {
+    const Eigen::ArrayXd mix = array({0.9, 0.1});
+    Eigen::ArrayXXd ratio(2, 2);
+    ratio << 4.0, 0.25, 0.3, 7.0;
+    constexpr double step = 1e-5;
+    const Eigen::ArrayXXd above = shape_from_rest(ratio * std::exp(step), mix).log();
+    const Eigen::ArrayXXd below = shape_from_rest(ratio * std::exp(-step), mix).log();
+    const Eigen::ArrayXXd slope = log_slope_from_rest(ratio, mix);
+    EXPECT_LE((slope - (above - below) / (2.0 * step)).abs().maxCoeff(), 1e-9);
+}
+
 TEST(OneAgainstRest, RefusesBadArguments) {
     const Eigen::ArrayXd mix = array({0.5, 0.5});
     const Eigen::ArrayXXd rows = two_rows();

@@ -118,6 +118,33 @@ TEST(RowRatio, OfManyPatientsIsTheDeltaMethod) {
     EXPECT_TRUE(near_rel(std::exp(-1.96 * sd), interval.low, 2e-3));
 }
 
+TEST(RowRatio, OfARaisedSummaryRowIsCutOffAtTheLeast) {
+    // The same row with and without a least of 0.02. Above the cut the law is the unbounded one, divided by
+    // the sum of the raised row; below it everything stands at the raised share.
+    const CompiledRow plain = summary_row(0.0, 1.0, 12.0, Scale::linear, array({1.0, 2.5}));
+    constexpr double least = 0.02;
+    ASSERT_LT(plain.probability(2), least);
+    CompiledRow raised = plain;
+    raised.probability = keep_at_least(plain.probability, least).probability;
+    std::get<SummaryLaw>(raised.law).least = least;
+    const double log_sum = std::log(plain.probability.max(least).sum());
+    for (const Eigen::Index band : {0, 1, 2}) {
+        const LogShareLaw free(plain, band);
+        const LogShareLaw bounded(raised, band);
+        const double width = free.quantile(0.975) - free.quantile(0.025);
+        for (const double q : {0.025, 0.3, 0.7, 0.975}) {
+            const double wanted = std::max(free.quantile(q), std::log(least)) - log_sum;
+            EXPECT_TRUE(near_abs(wanted, bounded.quantile(q), 0.01 * width)) << band << " " << q;
+        }
+    }
+    const IntervalEstimate ratio = row_ratio_interval(raised, raised, 2);
+    EXPECT_LT(ratio.low, 1.0);
+    EXPECT_GT(ratio.high, 1.0);
+    std::get<SummaryLaw>(raised.law).least = 0.3;
+    expect_domain_error([&] { (void)LogShareLaw(raised, 2); }, "LogShareLaw", "row.law.least", {}, 0.3,
+                        "in [0, 0.2]");
+}
+
 TEST(RowRatio, ReadsALogScaleAsTheLogarithm) {
     const CompiledRow linear = summary_row(1.0, 0.5, 12, Scale::linear, array({0.5, 1.5}));
     const CompiledRow log = summary_row(1.0, 0.5, 12, Scale::log, array({std::exp(0.5), std::exp(1.5)}));

@@ -210,7 +210,10 @@ TEST(Derive, PutsUrineGlucoseIntoTheOsmolalGapOrSaysThatItDidNot) {
     // Glycosuria seen but not measured: the gap would read too high and is not computed.
     entries.back() = {"glycosuria", "present"};
     EXPECT_EQ(derive_from(entries).lacking.at("urine_osmolal_gap"),
-              std::vector<std::string>{"urine_glucose"});
+              std::vector<std::string>{"glycosuria is present and urine glucose was not given"});
+    Entries less(entries.begin() + 1, entries.end());
+    EXPECT_EQ(derive_from(less).lacking.at("urine_osmolal_gap"),
+              (std::vector<std::string>{"urine_osmolality", "urine_glucose"}));
     entries.back() = {"glycosuria", "absent"};
     EXPECT_DOUBLE_EQ(point(derive_from(entries), "urine_osmolal_gap"), 160.0);
 }
@@ -356,8 +359,28 @@ TEST(Derive, HasTheEndsOfACensoredInput) {
             text = "<20 mmol/L";
         }
     }
-    // 60 + 32 - [0, 20): from 72, not attained, to 92.
-    EXPECT_EQ(derive_from(entries).find("urine_anion_gap")->value, (Interval{72, 92, true, false}));
+    // 60 + 32 - [0, 20): from 72, not attained, to 92, which rests on the floor of chloride alone.
+    EXPECT_EQ(derive_from(entries).find("urine_anion_gap")->value,
+              (Interval{72, 92, true, false, false, true}));
+}
+
+TEST(ImageOfBox, TellsMeasuredEndsFromFloorsAndCeilings) {
+    const Formula difference = [](const std::vector<double>& x) { return x[0] - x[1]; };
+    const Interval below_five{0, 5, false, true, true, false};
+    const Interval above_two{2, 9, true, false, false, true};
+    // [0, 5) - 1: its low end is the floor's.
+    EXPECT_EQ(*image_of_box({below_five, Interval::point(1)}, difference),
+              (Interval{-1, 4, false, true, true, false}));
+    // 1 - [0, 5): what was the floor is the ceiling now.
+    EXPECT_EQ(*image_of_box({Interval::point(1), below_five}, difference),
+              (Interval{-4, 1, true, false, false, true}));
+    // [0, 5) - (2, 9]: below 3, and nothing known at the other end.
+    EXPECT_EQ(*image_of_box({below_five, above_two}, difference),
+              (Interval{-9, 3, false, true, true, false}));
+    // An end that a measured corner attains as well is measured: 0 x 1 and 0 x [1, 3].
+    const Formula product = [](const std::vector<double>& x) { return x[0] * x[1]; };
+    EXPECT_EQ(*image_of_box({{0, 2, false, false, false, false}, {1, 3, false, false, true, false}}, product),
+              (Interval{0, 6, false, false, false, false}));
 }
 
 TEST(Derive, UsesTheClinicsCoefficients) {

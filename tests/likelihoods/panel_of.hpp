@@ -14,7 +14,9 @@ namespace steelyard::test {
 
 inline const likelihoods::FeatureVocabulary& vocabulary() {
     static const likelihoods::FeatureVocabulary features{{{"alkali_therapy", {"present", "absent"}},
+                                                          {"changing_creatinine", {"present", "absent"}},
                                                           {"glycosuria", {"present", "absent"}},
+                                                          {"pregnancy", {"present", "absent"}},
                                                           {"volume_status", {"depleted", "not_depleted"}}}};
     return features;
 }

@@ -11,6 +11,7 @@
 #include "near.hpp"
 #include "panel_of.hpp"
 #include "steelyard/likelihoods/derived.hpp"
+#include "steelyard/likelihoods/interval_words.hpp"
 
 namespace steelyard::likelihoods {
 namespace {
@@ -50,14 +51,42 @@ TEST(PanelBuilder, MakesUnitsCanonical) {
 }
 
 TEST(PanelBuilder, TakesALimitAsTheIntervalToTheEndOfThePlausibleRange) {
-    EXPECT_EQ(only(panel_of({{"urine_sodium", "<10 mmol/L"}})).value, (Interval{0.0, 10.0, false, true}));
-    EXPECT_EQ(only(panel_of({{"urine_sodium", "<= 10 mmol/L"}})).value, (Interval{0.0, 10.0, false, false}));
-    EXPECT_EQ(only(panel_of({{"serum_potassium", "> 8 mmol/L"}})).value, (Interval{8.0, 12.0, true, false}));
-    EXPECT_EQ(only(panel_of({{"serum_potassium", ">=8mmol/L"}})).value, (Interval{8.0, 12.0, false, false}));
-    EXPECT_EQ(only(panel_of({{"serum_potassium", "\xE2\x89\xA5 8 mmol/L"}})).value,
-              (Interval{8.0, 12.0, false, false}));
-    EXPECT_EQ(only(panel_of({{"urine_ph", "<5"}})).value, (Interval{4.0, 5.0, false, true}));
+    // The other end is a floor or a ceiling, not a measurement.
+    const auto up_to = [](double low, double high, bool open) {
+        return Interval{low, high, false, open, true, false};
+    };
+    const auto from = [](double low, double high, bool open) {
+        return Interval{low, high, open, false, false, true};
+    };
+    EXPECT_EQ(only(panel_of({{"urine_sodium", "<10 mmol/L"}})).value, up_to(0.0, 10.0, true));
+    EXPECT_EQ(only(panel_of({{"urine_sodium", "<= 10 mmol/L"}})).value, up_to(0.0, 10.0, false));
+    EXPECT_EQ(only(panel_of({{"serum_potassium", "> 8 mmol/L"}})).value, from(8.0, 12.0, true));
+    EXPECT_EQ(only(panel_of({{"serum_potassium", ">=8mmol/L"}})).value, from(8.0, 12.0, false));
+    EXPECT_EQ(only(panel_of({{"serum_potassium", "\xE2\x89\xA5 8 mmol/L"}})).value, from(8.0, 12.0, false));
+    EXPECT_EQ(only(panel_of({{"urine_ph", "<5"}})).value, up_to(4.0, 5.0, true));
     EXPECT_EQ(only(panel_of({{"urine_calcium", "<=0 mmol/L"}})).value, Interval::point(0.0));
+}
+
+TEST(IntervalWords, ReadALimitAsTheLaboratoryWroteIt) {
+    const auto words = [](const char* text) {
+        return interval_in_words(only(panel_of({{"serum_potassium", text}})).value, 6);
+    };
+    EXPECT_EQ(words("2.8 mmol/L"), "2.8");
+    EXPECT_EQ(words("<5 mmol/L"), "below 5");
+    EXPECT_EQ(words("<=5 mmol/L"), "at most 5");
+    EXPECT_EQ(words(">5 mmol/L"), "above 5");
+    EXPECT_EQ(words(">=5 mmol/L"), "5 or more");
+}
+
+TEST(IntervalWords, ShowBothEndsOnlyWhenBothWereMeasured) {
+    EXPECT_EQ(interval_in_words(Interval{3, 5}, 3), "3 to 5");
+    EXPECT_EQ(interval_in_words(Interval{3, 5, true, true}, 3), "3 to 5");
+    EXPECT_EQ(interval_in_words(Interval{3, 5, false, false, true, true}, 3), "not known");
+    EXPECT_EQ(interval_in_words(Interval::point(1234.5), 3), "1234");
+    EXPECT_EQ(interval_in_words(Interval::point(-0.0), 3), "0");
+    const auto tenths = [](double value) { return std::to_string(static_cast<int>(value * 10)) + "/10"; };
+    EXPECT_EQ(interval_in_words(Interval{0, 5, false, true, true, false}, tenths, " mmol/L"),
+              "below 50/10 mmol/L");
 }
 
 TEST(PanelBuilder, LetsOnlyPHAndPlainRatiosGoWithoutAUnit) {
@@ -257,7 +286,7 @@ TEST(PanelBuilder, TakesTheUnitApartAsWell) {
     EXPECT_EQ(faults.sorted()[1].code, Code::bad_unit);
     const Panel panel = builder.finish();
     EXPECT_EQ(panel.measured.size(), 3U);
-    EXPECT_EQ(panel.measured.at("serum_potassium").value, (Interval{1.0, 3.0, false, true}));
+    EXPECT_EQ(panel.measured.at("serum_potassium").value, (Interval{1.0, 3.0, false, true, true, false}));
 }
 
 TEST(PanelBuilder, ReadsEveryQuantityInEveryAcceptedUnit) {

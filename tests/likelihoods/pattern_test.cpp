@@ -214,6 +214,48 @@ TEST(Pattern, OfAlternativesOnlyTheFirstUsableIsRead) {
     EXPECT_EQ(read_small({{"serum_urate", "300 umol/L"}}).of("serum_urate").use, Use::read);
 }
 
+TEST(Pattern, AMissingFindingWhoseConditionFailsIsBarred) {
+    const Read low = read_small({{"fasting", "present"}, {"serum_albumin", "20 g/L"}});
+    EXPECT_EQ(low.of("serum_calcium").use, Use::missing);
+    EXPECT_EQ(low.of("serum_calcium").why_not, "not given");
+    EXPECT_EQ(low.of("serum_calcium").barred, "albumin is too low to read calcium (serum albumin 20 g/L)");
+    EXPECT_EQ(read_small(fasting).of("serum_calcium").barred, "");
+    EXPECT_EQ(read_small({{"serum_albumin", "<30 g/L"}}).of("serum_calcium").barred, "")
+        << "a limit that leaves the condition open does not fail it";
+    EXPECT_EQ(read_small(Entries{}).of("serum_phosphate").barred, "")
+        << "nor does a condition of which nothing is known, though it would set aside";
+    EXPECT_EQ(
+        read_small({{"serum_albumin", "20 g/L"}, {"serum_calcium", "2.3 mmol/L"}}).of("serum_calcium").barred,
+        "")
+        << "only what is missing is barred";
+}
+
+TEST(Pattern, AMissingAlternativeOfOneThatIsReadIsBarred) {
+    const Read read = read_small({{"serum_phosphate", "1 mmol/L"}, {"gfr", "90 mL/min/{1.73_m2}"}});
+    EXPECT_EQ(read.of("serum_urate").use, Use::missing);
+    EXPECT_EQ(read.of("serum_urate").why_not, "not given");
+    EXPECT_EQ(read.of("serum_urate").barred, "the serum phosphate is read in its place");
+    EXPECT_EQ(read.of("serum_phosphate").barred, "");
+    const Read second = read_small({{"serum_urate", "300 umol/L"}});
+    EXPECT_EQ(second.of("serum_phosphate").barred, "the serum urate is read in its place");
+    const Read own = read_small({{"serum_urate", "300 umol/L"}, {"gfr", "20 mL/min/{1.73_m2}"}});
+    EXPECT_EQ(own.of("serum_phosphate").barred, "filtration is too low (GFR 20 mL/min/1.73 m²)")
+        << "its own reason stands";
+    EXPECT_EQ(read_small(Entries{}).of("serum_urate").barred, "");
+}
+
+TEST(Pattern, OfTheShippedTablesBarsWhatWouldAddNothing) {
+    const TableSet adult = likelihoods::open_table_set("adult");
+    const Read acidotic(adult, {{"serum_bicarbonate", "14 mmol/L"}});
+    EXPECT_EQ(acidotic.of("fe_bicarbonate").use, Use::missing);
+    EXPECT_NE(acidotic.of("fe_bicarbonate").barred.find("(serum bicarbonate 14 mmol/L)"), std::string::npos)
+        << acidotic.of("fe_bicarbonate").barred;
+    const Read potassium(adult, {{"fe_potassium", "25 %"}});
+    ASSERT_EQ(potassium.of("fe_potassium").use, Use::read) << potassium.of("fe_potassium").why_not;
+    EXPECT_EQ(potassium.of("ttkg").use, Use::missing);
+    EXPECT_TRUE(potassium.of("ttkg").barred.ends_with("is read in its place")) << potassium.of("ttkg").barred;
+}
+
 TEST(Pattern, AGroupWeighsWhatIsReadOfIt) {
     const Read one = read_small(with(fasting, {{"serum_calcium", "2.3 mmol/L"}}));
     EXPECT_EQ(one.of("serum_calcium").weight, 1.0);
@@ -266,7 +308,8 @@ TEST(Pattern, NothingReadGivesNoRows) {
 }
 
 TEST(Pattern, ListsWhatNothingReads) {
-    const Read read = read_small({{"serum_lactate", "1 mmol/L"},       // nothing
+    const Read read = read_small({{"serum_glucose", "5 mmol/L"},       // nothing
+                                  {"serum_lactate", "1 mmol/L"},       // the gate
                                   {"serum_calcium", "2.3 mmol/L"},     // a table
                                   {"serum_magnesium", "0.8 mmol/L"},   // a joint table
                                   {"serum_albumin", "40 g/L"},         // a condition
@@ -274,7 +317,7 @@ TEST(Pattern, ListsWhatNothingReads) {
                                   {"serum_potassium", "3 mmol/L"},     // an urgent limit
                                   {"alkali", "absent"},                // the gate
                                   {"ttkg", "4"}});                     // nothing
-    EXPECT_EQ(read.pattern.unread, (std::vector<std::string>{"serum_lactate", "ttkg"}));
+    EXPECT_EQ(read.pattern.unread, (std::vector<std::string>{"serum_glucose", "ttkg"}));
 }
 
 TEST(Pattern, InputsOfWhatIsReadAreRead) {

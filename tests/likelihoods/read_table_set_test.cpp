@@ -56,10 +56,40 @@ TEST(ReadTableSet, ReadsTheSmallSetWhole) {
     EXPECT_EQ(set.gate.chemistry.albumin_reference, 40.0) << "4 g/dL";
     EXPECT_EQ(set.gate.chemistry.albumin_slope, 0.25);
     EXPECT_EQ(set.gate.alkali_feature, "alkali");
-    EXPECT_EQ(set.gate_entries.size(), 16U);
+    EXPECT_EQ(set.gate.pregnancy_feature, "") << "left out";
+    EXPECT_EQ(set.gate.lactate_high.value, 4.0);
+    EXPECT_EQ(set.gate.ketones_high.value, 3.0);
+    EXPECT_EQ(set.gate.pco2_high.value, 45.0);
+    EXPECT_TRUE(set.gate.gfr_conditions.empty()) << "no table of GFR";
+    EXPECT_EQ(set.gate_entries.size(), 19U);
     ASSERT_EQ(set.urgent.size(), 1U);
     EXPECT_EQ(set.urgent[0].low, 2.8);
     EXPECT_EQ(set.urgent[0].high, 6.2);
+}
+
+TEST(ReadTableSet, TakesAFeatureForPregnancyOrNone) {
+    const auto named = [](const std::string& feature) {
+        return likelihoods::read_table_set(
+                   small_files_with("set.yaml", "alkali_feature: alkali",
+                                    "alkali_feature: alkali\n  pregnancy_feature: " + feature),
+                   "small")
+            .gate.pregnancy_feature;
+    };
+    EXPECT_EQ(named("fasting"), "fasting");
+    EXPECT_EQ(named("none"), "");
+}
+
+TEST(ReadTableSet, HandsTheGateWhatItsGfrTableAsksOfFeatures) {
+    const TableSet set = likelihoods::load_table_set(STEELYARD_SOURCE_DIR "/likelihoods/tables/adult");
+    std::size_t asked = 0;
+    for (const likelihoods::Condition& condition : set.find_table("gfr")->usable_when) {
+        asked += condition.is_feature ? 1 : 0;
+    }
+    ASSERT_GT(asked, 0U);
+    EXPECT_EQ(set.gate.gfr_conditions.size(), asked);
+    EXPECT_EQ(set.gate.gfr_conditions[0].feature, "changing_creatinine");
+    EXPECT_EQ(set.gate.gfr_conditions[0].level, "absent");
+    EXPECT_FALSE(set.gate.gfr_conditions[0].otherwise.empty());
 }
 
 TEST(ReadTableSet, ReadsAHead) {
@@ -132,6 +162,18 @@ TEST(RowForms, JudgedRowsAreKeptAtTheLeast) {
     const engine::DirichletLaw& law = std::get<engine::DirichletLaw>(south.compiled.law);
     EXPECT_TRUE(near_rel(10.0, law.alpha.sum(), 1e-14)) << "the worth stays";
     EXPECT_TRUE(near_rel(10.0 * 0.4 / 1.004, law.alpha(2), 1e-14)) << "the law is centred on the row as used";
+}
+
+TEST(RowForms, TheLawOfAJudgedMeanIsToldOfTheLeast) {
+    // North is a study, south from memory and raised: mean 2.2, SD 0.2 puts little above 3.2.
+    const Files files = small_files_with("serum_calcium.yaml", "edges: [2.0, 2.6]", "edges: [2.0, 3.2]");
+    const TableSet set = likelihoods::read_table_set(files, "small");
+    const EvidenceRow& south = row(set, "serum_calcium", "south");
+    EXPECT_TRUE(south.least_acted);
+    EXPECT_EQ(std::get<engine::SummaryLaw>(south.compiled.law).least, 0.01);
+    EXPECT_EQ(std::get<engine::SummaryLaw>(row(set, "serum_calcium", "north").compiled.law).least, 0.0);
+    EXPECT_LT(south.compiled.probability(2), 0.01) << "raised, then normalised: a little below the least";
+    EXPECT_GT(south.compiled.probability(2), 0.01 / 1.01);
 }
 
 TEST(RowForms, StudiedRowsAreNotRaised) {
@@ -270,7 +312,17 @@ TEST(RowForms, RatiosAgainstTheRestAreSolvedBackToTheRowsTheyCameFrom) {
     EXPECT_EQ(row(set, "thirst", "south").form, RowForm::ratio_to_rest);
     EXPECT_EQ(row(set, "thirst", "south").as_given, "ratio to the rest 2.5 (2 to 3), 0.625 (0.5 to 0.7)");
     const engine::RatioLaw& law = std::get<engine::RatioLaw>(row(set, "thirst", "south").compiled.law);
-    EXPECT_TRUE(near_rel(std::log(1.5) / 3.919928, law.log_sd(0), 1e-6));
+    // p/m = R / (1 - w + w R) moves by (1 - w) / (1 - w + w R) of ln R: 0.6 / (0.6 + 0.4 * 2.5) for 2.5 (2 to
+    // 3), 0.6 / (0.6 + 0.4 * 0.625) for 0.625 (0.5 to 0.7).
+    EXPECT_TRUE(near_rel(0.375 * std::log(1.5) / 3.919928, law.log_sd(0), 1e-6));
+    EXPECT_TRUE(near_rel(0.6 / 0.85 * std::log(1.4) / 3.919928, law.log_sd(1), 1e-6));
+    EXPECT_TRUE(near_rel(std::log(2.5 / 1.6), law.log_ratio(0), 1e-12));
+    const auto& published = row(set, "thirst", "south").published;
+    ASSERT_EQ(published.size(), 2U);
+    EXPECT_EQ(published[1].low, 0.5);
+    EXPECT_EQ(published[1].high, 0.7);
+    EXPECT_EQ(row(set, "thirst", "north").published[0].high, 0.4) << "no range: the ratio three times";
+    EXPECT_TRUE(row(set, "serum_phosphate", "north").published.empty());
 }
 
 TEST(RowForms, RatiosAgainstTheRestOverManyBandsKeepTheRatiosBetweenCauses) {

@@ -3,9 +3,11 @@
 
 #include <gtest/gtest.h>
 
+#include <cmath>
 #include <stdexcept>
 
 #include "near.hpp"
+#include "steelyard/engine/row_ratio.hpp"
 #include "steelyard/likelihoods/cause_ratios.hpp"
 #include "steelyard/likelihoods/evidence_markdown.hpp"
 #include "table_files.hpp"
@@ -85,6 +87,118 @@ TEST(CauseRatios, GiveBackPublishedRatiosWithTheirInterval) {
     const auto turned = likelihoods::cause_ratios(set, *set.find_table("serum_urate"), "north", "south");
     EXPECT_TRUE(near_rel(1.0 / ratios[0].value, turned[0].value, 1e-12));
     EXPECT_TRUE(near_rel(1.0 / ratios[0].high, turned[0].low, 0.02));
+}
+
+TEST(CauseRatios, AgainstTheRestOfTwoCausesAreThePublishedOnes) {
+    // With two causes the rest of north is south: 4 (2 to 8) is shown as it was published, though both rows
+    // carry a range. Even mix; rows (0.8, 0.2) and (0.2, 0.8).
+    Files files = small_files();
+    text_named(files, "thirst.yaml") =
+        "format: steelyard.evidence-table/1\nfinding: thirst\ntitle: Thirst\nlevels: [present, absent]\n"
+        "study_mix: {north: 0.5, south: 0.5}\nrows:\n"
+        "  north: {ratio_to_rest: [4, 0.25], range: [[2, 8], [0.125, 0.5]], basis: elicited}\n"
+        "  south: {ratio_to_rest: [0.25, 4], range: [[0.125, 0.5], [2, 8]], basis: elicited}\n";
+    const TableSet set = likelihoods::read_table_set(files, "small");
+    const auto& thirst = *set.find_table("thirst");
+    const auto ratios = likelihoods::cause_ratios(set, thirst, "north", "south");
+    ASSERT_EQ(ratios.size(), 2U);
+    EXPECT_EQ(ratios[0].value, 4.0);
+    EXPECT_EQ(ratios[0].low, 2.0);
+    EXPECT_EQ(ratios[0].high, 8.0);
+    const auto turned = likelihoods::cause_ratios(set, thirst, "south", "north");
+    EXPECT_EQ(turned[0].value, 0.25);
+    EXPECT_EQ(turned[0].low, 0.125);
+    EXPECT_EQ(turned[0].high, 0.5);
+    // A 68.27 % interval reaches one standard deviation, ln 4 / (2 * 1.959964), either way.
+    const auto narrow = likelihoods::cause_ratios(set, thirst, "north", "south", 0.6826894921370859);
+    EXPECT_TRUE(near_rel(4.0 * std::exp(std::log(4.0) / 3.919928), narrow[0].high, 1e-6));
+}
+
+TEST(CauseRatios, AgainstTheRestTakeTheRangeOfWhicheverRowHasOne) {
+    Files files = small_files();
+    text_named(files, "thirst.yaml") =
+        "format: steelyard.evidence-table/1\nfinding: thirst\ntitle: Thirst\nlevels: [present, absent]\n"
+        "study_mix: {north: 0.5, south: 0.5}\nrows:\n"
+        "  north: {ratio_to_rest: [4, 0.25], basis: elicited}\n"
+        "  south: {ratio_to_rest: [0.25, 4], range: [[0.125, 0.5], [2, 8]], basis: elicited}\n";
+    const TableSet set = likelihoods::read_table_set(files, "small");
+    const auto ratios = likelihoods::cause_ratios(set, *set.find_table("thirst"), "north", "south");
+    EXPECT_EQ(ratios[0].value, 4.0);
+    EXPECT_EQ(ratios[0].low, 2.0);
+    EXPECT_EQ(ratios[0].high, 8.0);
+}
+
+/// The small set with a third cause, west, and a table of urate as given.
+TableSet with_three_causes(const std::string& urate_rows) {
+    Files files = small_files_with("set.yaml", "  south: {title: Southern fever}",
+                                   "  south: {title: Southern fever}\n  west: {title: Western fever}");
+    text_named(files, "serum_urate.yaml") =
+        "format: steelyard.evidence-table/1\nfinding: serum_urate\nunit: umol/L\nedges: [350]\n" + urate_rows;
+    for (const auto& [name, addition] : std::vector<std::pair<std::string, std::string>>{
+             {"serum_calcium.yaml", "  west: {mean: 2.3, sd: 0.2, n: 9, basis: elicited}\n"},
+             {"serum_phosphate.yaml", "  west: {share: [0.2, 0.7, 0.1], worth: 20, basis: elicited}\n"},
+             {"thirst.yaml", "  west: {counts: [1, 1], basis: elicited}\n"},
+             {"tremor_and_magnesium.yaml", "  west: {joint: [[1, 1], [1, 1]], basis: elicited}\n"}}) {
+        std::string& text = text_named(files, name);
+        text.insert(text.find("rows:\n") + 6, addition);
+    }
+    return likelihoods::read_table_set(files, "small");
+}
+
+// Counts 3 and 5 are the shares 3.5/9 and 5.5/9. Ratios 9/7 and 9/11 make them even; 13/7 and 5/11 make them
+// 6.5/9 and 2.5/9.
+constexpr const char* against_north =
+    "rows:\n"
+    "  north: {counts: [3, 5], basis: elicited}\n"
+    "  south: {ratio: [1.2857142857142858, 0.8181818181818182], against: north, basis: elicited}\n"
+    "  west: {ratio: [1.8571428571428572, 0.45454545454545453], against: north, basis: elicited}\n";
+
+TEST(CauseRatios, OfTwoRowsAgainstTheSameThirdHoldThatOneFixed) {
+    const TableSet set = with_three_causes(against_north);
+    const auto& urate = *set.find_table("serum_urate");
+    const auto ratios = likelihoods::cause_ratios(set, urate, "south", "west");
+    ASSERT_EQ(ratios.size(), 2U);
+    EXPECT_TRUE(near_rel(9.0 / 13.0, ratios[0].value, 1e-12));
+    EXPECT_TRUE(near_rel(9.0 / 5.0, ratios[1].value, 1e-12));
+    for (const auto& ratio : ratios) {
+        EXPECT_TRUE(near_rel(ratio.value, ratio.low, 1e-12)) << "north's uncertainty cancels";
+        EXPECT_TRUE(near_rel(ratio.value, ratio.high, 1e-12));
+    }
+}
+
+TEST(CauseRatios, AlongAChainOfRatiosAddTheirVariances) {
+    // West against south against north, 2-fold and 3-fold ranges either way: against north the two logarithms
+    // add as independent normals, sqrt(ln(2)^2 + ln(3)^2), and north's own counts cancel.
+    const TableSet set = with_three_causes(
+        "rows:\n"
+        "  north: {share: [0.4, 0.6], worth: 10, basis: elicited}\n"
+        "  south: {ratio: [1, 1], range: [[0.5, 2], [0.5, 2]], against: north, basis: elicited}\n"
+        "  west: {ratio: [1, 1], range: [[0.3333333333333333, 3], [0.3333333333333333, 3]], against: south,\n"
+        "         basis: elicited}\n");
+    const auto& urate = *set.find_table("serum_urate");
+    const double reach = std::exp(std::hypot(std::log(2.0), std::log(3.0)));
+    const auto ratios = likelihoods::cause_ratios(set, urate, "west", "north");
+    EXPECT_TRUE(near_rel(reach, ratios[0].high, 0.02));
+    EXPECT_TRUE(near_rel(1.0 / reach, ratios[0].low, 0.02));
+    const auto step = likelihoods::cause_ratios(set, urate, "west", "south");
+    EXPECT_TRUE(near_rel(3.0, step[0].high, 0.02));
+    EXPECT_TRUE(near_rel(1.0 / 3.0, step[0].low, 0.02));
+}
+
+TEST(CauseRatios, OfARaisedBandEndWhereItWasRaisedTo) {
+    // South, mean 2.2, SD 0.2, n 16, has next to nothing above 3.2; judged, it is raised to 0.01.
+    const Files files = small_files_with("serum_calcium.yaml", "edges: [2.0, 2.6]", "edges: [2.0, 3.2]");
+    const TableSet set = likelihoods::read_table_set(files, "small");
+    const auto& calcium = *set.find_table("serum_calcium");
+    const likelihoods::EvidenceRow& south = likelihoods::row_of(set, calcium, "south");
+    const engine::LogShareLaw law(south.compiled, 2);
+    const double floor = std::log(south.compiled.probability(2));
+    EXPECT_GE(law.quantile(0.001), floor - 1e-12) << "never below what the row was raised to";
+    EXPECT_TRUE(near_abs(floor, law.quantile(0.025), 0.05));
+    for (const auto& ratio : likelihoods::cause_ratios(set, calcium, "south", "north")) {
+        EXPECT_LT(ratio.low, ratio.value);
+        EXPECT_GT(ratio.high, ratio.value);
+    }
 }
 
 TEST(CauseRatios, OfACauseAgainstItsOwnRowAreOne) {

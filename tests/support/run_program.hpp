@@ -58,6 +58,16 @@ inline std::string text_of(const std::filesystem::path& path) {
     return text.str();
 }
 
+/// Line breaks and runs of blanks as one blank: what a reader reads, wherever lines are broken.
+inline std::string in_one_line(const std::string& text) {
+    std::istringstream words(text);
+    std::string line;
+    for (std::string word; words >> word;) {
+        line += (line.empty() ? "" : " ") + word;
+    }
+    return line;
+}
+
 struct Outcome {
     int code = -1;
     std::string out, err;

@@ -2,6 +2,7 @@
 #pragma once
 // Results go to standard output or, with --out, to a file that appears whole or not at all.
 
+#include <iosfwd>
 #include <stdexcept>
 #include <string>
 #include <string_view>
@@ -13,6 +14,10 @@ class OutputError : public std::runtime_error {
   public:
     using std::runtime_error::runtime_error;
 };
+
+/// Writes a result where the user wants it: to `out` when `path` is empty or `-`, else to the file, whole.
+/// @throws OutputError
+void write_result(const std::string& path, std::string_view text, std::ostream& out);
 
 /// Replaces `path` by `text` through a temporary file beside it, so that a reader sees the old file or the
 /// new one.

@@ -25,6 +25,12 @@ std::string report_text(const Weighing& weighing, const likelihoods::TableSet& t
 nlohmann::ordered_json report_json(const Weighing& weighing, const likelihoods::TableSet& tables,
                                    const Provenance& provenance);
 
+/// JSON as text. File names need not be UTF-8; bytes that are not become U+FFFD.
+std::string dumped(const nlohmann::ordered_json& json, int indent = -1);
+
+/// What a figure rests on, for people: `study batlle-1988`, `judgement (bearing on it: berend-2017)`.
+std::string grounds_in_words(const document::Grounds& grounds);
+
 /// `key: citation. doi .... Read: abstract.`, made harmless for a terminal.
 std::string citation(const document::Source& source);
 

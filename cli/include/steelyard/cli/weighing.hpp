@@ -28,6 +28,13 @@ struct LeftOut {
     std::string why;
 };
 
+/// A finding of the tables that is not known; `barred` says why it could not be read in this case even if it
+/// were.
+struct MissingFinding {
+    std::string id;
+    std::string barred;
+};
+
 /// One finding of the ledger.
 struct LedgerEntry {
     likelihoods::FindingReading reading;
@@ -52,7 +59,7 @@ struct Weighing {
     std::vector<WeighedCause> causes;  ///< in the order of the tables; empty when not weighed
     std::vector<LeftOut> left_out;
     std::vector<LedgerEntry> ledger;   ///< findings read or set aside, in the order of the tables
-    std::vector<std::string> missing;  ///< finding ids not known for this case
+    std::vector<MissingFinding> missing;  ///< findings not known for this case
     std::vector<std::string> unread;   ///< entries of the case that nothing here reads
     std::vector<std::size_t>
         ranking;              ///< indices into `causes`, most probable first; ties in order of the tables

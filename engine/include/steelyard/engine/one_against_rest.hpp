@@ -28,6 +28,12 @@ void check_mix(std::string_view function, std::string_view argument,
 [[nodiscard]] Eigen::ArrayXXd shape_from_rest(const Eigen::Ref<const Eigen::ArrayXXd>& ratio,
                                               const Eigen::Ref<const Eigen::ArrayXd>& study_mix);
 
+/// d ln(p(b, c) / m(b)) / d ln R = (1 - w) / (1 - w + w R): how much of an uncertainty of ln R is one of the
+/// row. The more of band b the cause holds already, the less its row moves.
+/// @param ratio, study_mix  as above   @returns  [1]; shape (B, K); in (0, 1)   @throws DomainError
+[[nodiscard]] Eigen::ArrayXXd log_slope_from_rest(const Eigen::Ref<const Eigen::ArrayXXd>& ratio,
+                                                  const Eigen::Ref<const Eigen::ArrayXd>& study_mix);
+
 /// S per band = sum over causes of w R / (1 - w + w R). The ratios describe one study only where S = 1.
 /// @returns  [1]; shape (B)
 [[nodiscard]] Eigen::ArrayXd band_sum(const Eigen::Ref<const Eigen::ArrayXXd>& ratio,

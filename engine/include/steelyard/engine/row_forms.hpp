@@ -26,6 +26,9 @@ struct SummaryLaw {
     double n = 2.0;
     Scale scale = Scale::linear;
     Eigen::ArrayXd edges;  ///< shape (B - 1), on the linear scale
+    /// [1], in [0, 0.2]; above 0 when keep_at_least() acted on the row: each share then stands for
+    /// max(share, least) over the sum of the raised row.
+    double least = 0.0;
 };
 
 /// Ratios against a reference row: probability = ratio * reference, ln ratio ~ normal(., sd).
@@ -101,7 +104,8 @@ struct RestSolution {
 RestSolution solve_ratio_to_rest(const Eigen::Ref<const Eigen::ArrayXXd>& ratio,
                                  const Eigen::Ref<const Eigen::ArrayXd>& study_mix);
 
-/// Raises every band of a row to at least `least`, then normalises; `acted` tells whether a band was raised.
+/// Raises every band of a row to at least `least`, then normalises, so that a raised band ends a little below
+/// `least`; `acted` tells whether a band was raised.
 struct BoundedRow {
     Eigen::ArrayXd probability;  ///< the row itself, untouched, when no band was raised
     bool acted = false;

@@ -16,9 +16,9 @@ namespace steelyard::engine {
 ///
 /// Dirichlet: the logarithm of a Beta variable. Summary: the mean and variance drawn from their normal and
 /// scaled-inverse-chi-square posterior, by quadrature over both; no draws, so the same row gives the same
-/// interval always. Ratio: normal about ln p with the row's own standard deviation. Its reference row's
-/// uncertainty comes on top when that row is given; it is left out when the ratio is shown against that very
-/// reference, where it cancels.
+/// interval always; a share below the law's `least` counts as `least`, as in the row itself. Ratio: normal
+/// about ln p with the row's own standard deviation. Its reference row's uncertainty comes on top when that
+/// row is given; it is left out when the ratio is shown against that very reference, where it cancels.
 class LogShareLaw {
   public:
     /// @param row        compiled row; shape (B)

@@ -16,7 +16,7 @@ using Formula = std::function<double(const std::vector<double>&)>;
 ///
 /// A formula that is monotone in each input while the others are held has its extremes at the box's corners,
 /// whichever way it runs. An end of the result is open when every corner that attains it has an open end of
-/// some input.
+/// some input; it is a floor or ceiling when every such corner has one.
 ///
 /// @param box  one interval per argument, finite ends; shape (n), n <= 16
 /// @returns    the interval, or empty when the formula is not finite at some corner. Cost 2^(inputs that are

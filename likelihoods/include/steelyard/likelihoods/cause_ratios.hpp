@@ -14,8 +14,12 @@ namespace steelyard::likelihoods {
 /// P(band | a) / P(band | b) for each band of a table, with the equal-tailed interval of both rows'
 /// uncertainty.
 ///
-/// A row given as ratios against b's own row is shown with the ratios' interval alone: what is not known of b
-/// cancels.
+/// What both rows stand on cancels. A row given as ratios against b's own row is shown with the ratios'
+/// interval alone; of two rows given against the same third one that one is held fixed. In a table of two
+/// causes with ratios against the rest, the rest of the one is the other: the published ratio and range are
+/// shown themselves, whatever the solved rows lost to rounding. With more causes the two solved rows count as
+/// independent. Where the table's `least` acted on a mean and spread, shares below it count as it, so that
+/// the interval has its end there.
 ///
 /// @param a, b   causes of the set, composites included; a cause against itself, or against one whose row it
 /// takes,

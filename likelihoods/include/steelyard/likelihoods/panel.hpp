@@ -19,8 +19,10 @@ namespace steelyard::likelihoods {
 struct Interval {
     double low = 0.0, high = 0.0;
     bool low_open = false, high_open = false;
+    bool low_is_floor = false;     ///< `low` is only the end of the plausible range, as that of `<5`
+    bool high_is_ceiling = false;  ///< `high` is only the end of the plausible range, as that of `>5`
 
-    static Interval point(double value) noexcept { return {value, value, false, false}; }
+    static Interval point(double value) noexcept { return {value, value}; }
     bool is_point() const noexcept { return low == high; }
     bool operator==(const Interval&) const = default;
 };

@@ -23,6 +23,9 @@ struct FindingReading {
         cells;            ///< bands whose probabilities add up: one; several for a half-known joint table
     std::string band;     ///< the band's name
     std::string why_not;  ///< set aside: the reason; missing: what is lacking
+    /// Missing: why giving it would add nothing to what is read, in words: one of its conditions fails, or an
+    /// alternative is read in its place. Empty otherwise.
+    std::string barred;
     std::vector<std::string>
         remarks;  ///< what a reader should know: a dipstick near an edge, a computed input
     std::vector<std::string>

@@ -11,6 +11,7 @@
 #include <vector>
 
 #include "steelyard/document/sources.hpp"
+#include "steelyard/engine/proportion.hpp"
 #include "steelyard/engine/row_forms.hpp"
 #include "steelyard/likelihoods/gate.hpp"
 #include "steelyard/likelihoods/panel.hpp"
@@ -51,7 +52,10 @@ struct EvidenceRow {
     RowForm form{};
     document::Grounds grounds;
     std::string note;
-    std::string against;              ///< ratio: the cause whose row the ratios refer to; empty otherwise
+    std::string against;  ///< ratio: the cause whose row the ratios refer to; empty otherwise
+    std::vector<engine::IntervalEstimate>
+        published;  ///< ratio and ratio_to_rest: per band the ratio and its 95 % range as given, the ratio
+                    ///< three times without one; empty for other forms
     engine::CompiledRow compiled;     ///< band probabilities as used, and the law of their uncertainty
     bool least_acted = false;         ///< the table's `least` raised a band of this row
     std::string as_given;             ///< in words: `mean 23, SEM 4.1, n 11`
@@ -77,7 +81,7 @@ struct EvidenceTable {
     std::vector<Condition> usable_when;
     std::vector<EvidenceRow> rows;  ///< one per non-composite cause, in the order of the set
     document::Sources sources;
-    double least = 0.005;
+    double least = 0.005;      ///< bands of judged rows are raised to it, then the row is normalised
     Eigen::ArrayXd study_mix;  ///< ratio_to_rest: share of each row's cause, sums to 1; empty otherwise
     bool scale_is_unique =
         true;  ///< ratio_to_rest: whether the ratios fix the rows; ratios between causes always are

@@ -1,9 +1,0 @@
-// SPDX-License-Identifier: Apache-2.0
-// Property tests run on the same cases every time, unless RC_PARAMS says otherwise.
-#include <cstdlib>
-
-namespace {
-
-[[maybe_unused]] const int is_set = setenv("RC_PARAMS", "seed=20260101 max_success=300", 0);
-
-}  // namespace
