@@ -86,7 +86,10 @@ class PatternReader {
         std::vector<std::string> words;
         for (const std::string& item : lacking->second) {
             const QuantityKind* kind = find_quantity(item);
-            words.push_back(kind != nullptr ? in_sentence(kind->title) : item);
+            if (kind == nullptr) {
+                return item;  // a reason in words, not the name of an input
+            }
+            words.push_back(in_sentence(kind->title));
         }
         return fmt::format("needs {}", detail::listed_in_words(words));
     }
@@ -235,8 +238,8 @@ class PatternReader {
         return found == pattern_.findings.end() ? nullptr : &*found;
     }
 
-    /// Of each list of alternatives only the first that can be read is read; the others of the list are set
-    /// aside, or barred when they are missing.
+    /// Of each list of alternatives only the first that can be read is read; the others are set aside, or barred
+    /// when they are missing. A missing one that is preferred to what is read is not barred: it would be read.
     void prefer() {
         for (const OneOf& list : set_.one_of) {
             std::vector<FindingReading*> members;
@@ -253,10 +256,8 @@ class PatternReader {
             }
             const std::string reason =
                 fmt::format("the {} is read in its place", in_sentence(set_.tables[(*first)->table].title));
-            for (FindingReading* member : members) {
-                if (member == *first) {
-                    continue;
-                }
+            for (auto later = first + 1; later != members.end(); ++later) {
+                FindingReading* member = *later;
                 if (member->use == Use::read) {
                     member->use = Use::set_aside;
                     member->why_not = reason;

@@ -142,7 +142,7 @@ TEST(RowRatio, OfARaisedSummaryRowIsCutOffAtTheLeast) {
     EXPECT_GT(ratio.high, 1.0);
     std::get<SummaryLaw>(raised.law).least = 0.3;
     expect_domain_error([&] { (void)LogShareLaw(raised, 2); }, "LogShareLaw", "row.law.least", {}, 0.3,
-                        "in [0, 0.2]");
+                        "between 0 and 0.2");
 }
 
 TEST(RowRatio, ReadsALogScaleAsTheLogarithm) {

@@ -330,7 +330,7 @@ TEST(AdultSet, TelephonesWhereTheMeanLaboratoryDoes) {
             EXPECT_TRUE(near_abs(40.0, *limit.high, 1e-12)) << limit.quantity;
         }
     }
-    EXPECT_EQ(5U, adult().urgent.size());
+    EXPECT_EQ(6U, adult().urgent.size());
 }
 
 /// What became of one finding of a panel given as flat entries.
