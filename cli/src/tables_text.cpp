@@ -45,10 +45,10 @@ std::string ratio_words(double ratio) {
 
 std::string head(const EvidenceTable& table, bool colour) {
     const std::string unit = unit_shown(table.unit);
-    std::string text =
-        "\n" +
-        emphasised(visible(unit.empty() ? table.title : fmt::format("{} [{}]", table.title, unit)), colour);
-    return text + fmt::format("  ({}; {})\n", table.finding, table.burden);
+    const std::string title = visible(unit.empty() ? table.title : fmt::format("{} [{}]", table.title, unit));
+    const std::string id = fmt::format("({}; {})", table.finding, table.burden);
+    const bool fits = text_width(title) + 2 + text_width(id) <= page_width;
+    return "\n" + emphasised(title, colour) + (fits ? "  " : "\n  ") + id + "\n";
 }
 
 std::string conditions(const TableSet& set, const EvidenceTable& table) {

@@ -238,8 +238,9 @@ class PatternReader {
         return found == pattern_.findings.end() ? nullptr : &*found;
     }
 
-    /// Of each list of alternatives only the first that can be read is read; the others are set aside, or barred
-    /// when they are missing. A missing one that is preferred to what is read is not barred: it would be read.
+    /// Of each list of alternatives only the first that can be read is read; the others are set aside, or
+    /// barred when they are missing. A missing one that is preferred to what is read is not barred: it would
+    /// be read.
     void prefer() {
         for (const OneOf& list : set_.one_of) {
             std::vector<FindingReading*> members;

@@ -1,5 +1,6 @@
 // SPDX-License-Identifier: Apache-2.0
-// From command to finished report: wall time and peak memory of whole processes, the program and an empty one in turn.
+// From command to finished report: wall time and peak memory of whole processes, the program and an empty one
+// in turn.
 //
 // usage: start_up_bench RUNS EMPTY_PROGRAM PROGRAM ARGUMENTS...
 // Google Benchmark measures inside one process; here the process itself is what is measured.

@@ -19,7 +19,7 @@ TEST(Percent, NeverSaysNoneOrAll) {
     EXPECT_EQ(percent(1.0), ">99 %");
     EXPECT_TRUE(rc::check("no 0 % and no 100 %", [] {
         const double p = static_cast<double>(*rc::gen::inRange(0, 1'000'001)) / 1e6;
-        RC_ASSERT(percent(p) != "0 %" && percent(p) != "100 %");
+        RC_ASSERT((percent(p) != "0 %" && percent(p) != "100 %"));
     }));
 }
 

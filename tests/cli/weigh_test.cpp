@@ -216,7 +216,8 @@ TEST(Weigh, SetsTheUrineAnionGapAsideWhenTheUrineIsAlkalineAndSaysWhy) {
     std::string text = classic_case;
     text.replace(text.find("urine: {ph: 6.4"), 15, "urine: {ph: 7.4");
     bool found = false;
-    for (const Json& line : report_of({"-"}, text)["ledger"]) {
+    const Json report = report_of({"-"}, text);
+    for (const Json& line : report["ledger"]) {
         if (line["finding"] == "urine_anion_gap") {
             found = true;
             EXPECT_FALSE(line["used"].get<bool>());

@@ -393,8 +393,8 @@ TEST(Pattern, EveryValueFallsInExactlyOneBand) {
         RC_ASSERT(pattern.findings[0].cells.size() == 1U);
         const auto band = static_cast<std::size_t>(pattern.findings[0].cells[0]);
         constexpr double hair = 1e-8;
-        RC_ASSERT(band == 0 || value >= edges[band - 1] - hair);
-        RC_ASSERT(band == edges.size() || value < edges[band] + hair);
+        RC_ASSERT((band == 0 || value >= edges[band - 1] - hair));
+        RC_ASSERT((band == edges.size() || value < edges[band] + hair));
     }));
 }
 

@@ -58,9 +58,9 @@ struct Weighing {
     bool weighed_anyway = false;       ///< out of scope, but asked for
     std::vector<WeighedCause> causes;  ///< in the order of the tables; empty when not weighed
     std::vector<LeftOut> left_out;
-    std::vector<LedgerEntry> ledger;   ///< findings read or set aside, in the order of the tables
+    std::vector<LedgerEntry> ledger;      ///< findings read or set aside, in the order of the tables
     std::vector<MissingFinding> missing;  ///< findings not known for this case
-    std::vector<std::string> unread;   ///< entries of the case that nothing here reads
+    std::vector<std::string> unread;      ///< entries of the case that nothing here reads
     std::vector<std::size_t>
         ranking;              ///< indices into `causes`, most probable first; ties in order of the tables
     double prior_nats = 0.0;  ///< ln of the prior odds of leader against runner-up
