@@ -5,6 +5,7 @@
 
 #include <cmath>
 
+#include "steelyard/engine/log_weight.hpp"
 #include "steelyard/likelihoods/interval_words.hpp"
 #include "steelyard/likelihoods/unit.hpp"
 
@@ -72,7 +73,7 @@ std::string odds_in_words(double odds) {
 }
 
 double decibans(double nats) {
-    return nats * (10.0 / std::log(10.0));
+    return engine::LogWeight::nats(nats).to_decibans();
 }
 
 }  // namespace steelyard::cli

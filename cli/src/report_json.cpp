@@ -1,8 +1,7 @@
 // SPDX-License-Identifier: Apache-2.0
-#include <cmath>
-
 #include "steelyard/cli/numbers.hpp"
 #include "steelyard/cli/report.hpp"
+#include "steelyard/engine/log_weight.hpp"
 
 namespace steelyard::cli {
 namespace {
@@ -91,7 +90,7 @@ Json ledger_entry_json(const Weighing& weighing, const likelihoods::TableSet& ta
     json["weight"] = used ? Json(reading.weight) : Json(nullptr);
     json["log_likelihood"] = used ? Json::object() : Json(nullptr);
     json["decibans"] = used ? Json(decibans(entry.nats)) : Json(nullptr);
-    json["bits"] = used ? Json(entry.nats / std::log(2.0)) : Json(nullptr);
+    json["bits"] = used ? Json(engine::LogWeight::nats(entry.nats).to_bits()) : Json(nullptr);
     json["basis"] = Json::object();
     json["source"] = Json::object();
     for (std::size_t k = 0; k < weighing.causes.size(); ++k) {

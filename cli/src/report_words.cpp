@@ -110,18 +110,23 @@ std::string grounds_sentence(const Weighing& weighing) {
     for (const auto& [basis, share] : weighing.by_basis.shares) {
         (document::is_judged(basis) ? judged : read_somewhere) += share;
     }
+    std::string sentence;
     if (judged >= 0.995) {
-        return "All of the weight between these two rests on judgement or memory, none on published figures: "
-               "take the "
-               "percentages as a ranking, not as measured chances.";
+        sentence =
+            "All of the weight of the findings between these two rests on judgement or memory, none on "
+            "published figures.";
+    } else if (read_somewhere >= 0.995) {
+        sentence = "All of the weight of the findings between these two rests on published figures.";
+    } else {
+        sentence = fmt::format(
+            "Of the weight of the findings between these two, {} rests on published figures and {} on "
+            "judgement or memory.",
+            percent(read_somewhere), percent(judged));
     }
-    if (read_somewhere >= 0.995) {
-        return "All of the weight of the findings between these two rests on published figures.";
+    if (judged > 0.5) {
+        sentence += " Take the percentages as a ranking, not as measured chances.";
     }
-    return fmt::format(
-        "Of the weight of the findings between these two, {} rests on published figures and {} on judgement "
-        "or memory.",
-        percent(read_somewhere), percent(judged));
+    return sentence;
 }
 
 }  // namespace steelyard::cli

@@ -8,6 +8,7 @@
 #include "steelyard/cli/numbers.hpp"
 #include "steelyard/cli/report.hpp"
 #include "steelyard/cli/terminal.hpp"
+#include "steelyard/likelihoods/words.hpp"
 #include "tables_views.hpp"
 
 namespace steelyard::cli {
@@ -54,7 +55,8 @@ std::string head(const EvidenceTable& table, bool colour) {
 std::string conditions(const TableSet& set, const EvidenceTable& table) {
     std::string text;
     for (const likelihoods::Condition& condition : table.usable_when) {
-        text += wrapped(fmt::format("Read only when {}; otherwise: {}", condition_words(set, condition),
+        text += wrapped(fmt::format("Read only {}; otherwise: {}",
+                                    visible(likelihoods::condition_in_words(set, condition)),
                                     visible(condition.otherwise)),
                         "  ", "    ");
     }

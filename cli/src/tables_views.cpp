@@ -8,6 +8,7 @@
 #include "steelyard/cli/numbers.hpp"
 #include "steelyard/cli/terminal.hpp"
 #include "steelyard/likelihoods/cause_ratios.hpp"
+#include "steelyard/likelihoods/words.hpp"
 
 namespace steelyard::cli {
 namespace {
@@ -17,14 +18,6 @@ using likelihoods::Cause;
 using likelihoods::EvidenceRow;
 using likelihoods::EvidenceTable;
 using likelihoods::TableSet;
-
-std::string lower_first(std::string text) {
-    // Only a plain word is lowered: GFR and pH keep their form.
-    if (text.size() > 1 && text[0] >= 'A' && text[0] <= 'Z' && text[1] >= 'a' && text[1] <= 'z') {
-        text[0] = static_cast<char>(text[0] - 'A' + 'a');
-    }
-    return text;
-}
 
 Json row_json(const EvidenceRow& row) {
     return {{"cause", row.cause},
@@ -71,35 +64,14 @@ std::vector<BandRatio> band_ratios(const TableSet& set, const EvidenceTable& tab
     return ratios;
 }
 
-std::string condition_words(const TableSet& set, const likelihoods::Condition& condition) {
-    const std::string subject = lower_first(set.title_of(condition.subject));
-    if (condition.is_feature) {
-        std::string level = condition.level;
-        std::replace(level.begin(), level.end(), '_', ' ');
-        return fmt::format("\"{}\" is {}", subject, level);
-    }
-    std::string limits;
-    const likelihoods::QuantityKind* kind = likelihoods::find_quantity(condition.subject);
-    const auto add = [&](std::string_view words, const std::optional<double>& value) {
-        if (value) {
-            const std::string unit = kind == nullptr ? "" : unit_shown(kind->unit);
-            limits += fmt::format("{}{} {}{}{}", limits.empty() ? "" : " and ", words, plain(*value, 6),
-                                  unit.empty() ? "" : " ", unit);
-        }
-    };
-    add("at least", condition.at_least);
-    add("above", condition.above);
-    add("at most", condition.at_most);
-    add("below", condition.below);
-    return fmt::format("{} is {}", subject, limits);
-}
-
 std::string takes_words(const TableSet& set, const Cause& composite) {
     std::string words;
     for (const auto& [finding, part] : composite.takes) {
-        words += fmt::format("{} from {}; ", set.title_of(finding), lower_first(set.title_of(part)));
+        words += fmt::format("{} from {}; ", likelihoods::title_in_sentence(set.title_of(finding)),
+                             likelihoods::title_in_sentence(set.title_of(part)));
     }
-    return words + fmt::format("all others from {}", lower_first(set.title_of(composite.otherwise)));
+    return words + fmt::format("all others from {}",
+                               likelihoods::title_in_sentence(set.title_of(composite.otherwise)));
 }
 
 Json tables_json(const TableSet& set, const std::vector<const EvidenceTable*>& tables,
@@ -127,8 +99,8 @@ Json tables_json(const TableSet& set, const std::vector<const EvidenceTable*>& t
         json["edges"] = table->edges;
         json["usable_when"] = Json::array();
         for (const likelihoods::Condition& condition : table->usable_when) {
-            json["usable_when"].push_back(
-                {{"condition", condition_words(set, condition)}, {"otherwise", condition.otherwise}});
+            json["usable_when"].push_back({{"condition", likelihoods::condition_in_words(set, condition)},
+                                           {"otherwise", condition.otherwise}});
         }
         json["rows"] = Json::array();
         for (const EvidenceRow& row : table->rows) {

@@ -18,10 +18,7 @@ struct BandRatio {
 std::vector<BandRatio> band_ratios(const likelihoods::TableSet& set, const likelihoods::EvidenceTable& table,
                                    const std::string& cause, const std::string& against);
 
-/// `urine sodium is at least 25 mmol/L`.
-std::string condition_words(const likelihoods::TableSet& set, const likelihoods::Condition& condition);
-
-/// `GFR from renal failure; all others from low aldosterone`.
+/// `glomerular filtration rate from renal failure; all others from low aldosterone`.
 std::string takes_words(const likelihoods::TableSet& set, const likelihoods::Cause& composite);
 
 /// @param cause, against  both empty: band probabilities; otherwise the ratio of the two

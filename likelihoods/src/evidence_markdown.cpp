@@ -6,7 +6,7 @@
 
 #include <algorithm>
 
-#include "condition_text.hpp"
+#include "steelyard/likelihoods/words.hpp"
 #include "wording.hpp"
 
 namespace steelyard::likelihoods {
@@ -189,8 +189,7 @@ class Writer {
 
     void notes(const EvidenceTable& table) {
         for (const Condition& condition : table.usable_when) {
-            line("- Read only {}; otherwise set aside: {}{}",
-                 escaped(detail::condition_in_words(set_, condition)),
+            line("- Read only {}; otherwise set aside: {}{}", escaped(condition_in_words(set_, condition)),
                  end_with_stop(escaped(condition.otherwise)),
                  condition.grounds ? fmt::format(" Basis: {}.", grounds_text(*condition.grounds)) : "");
         }

@@ -192,6 +192,13 @@ TEST(Weigh, LeavesOutWhatThePriorSetOrTheUserLeavesOut) {
                 std::log(some.at("proximal") / some.at("classic_distal")), 1e-12);
 }
 
+TEST(Weigh, AsksToTakeJudgedPercentagesAsARanking) {
+    const std::string report = in_one_line(run({"weigh", "-"}, classic_case).out);
+    EXPECT_NE(report.find("on judgement or memory. Take the percentages as a ranking"), std::string::npos)
+        << report;
+    EXPECT_NE(report.find("No interval is given"), std::string::npos);
+}
+
 TEST(Weigh, ReadsTheCompositeCauseWhenThePriorsNameIt) {
     const auto posterior = posterior_of(report_of({"-", "--priors", "renal-clinic-overlap"}, classic_case));
     EXPECT_TRUE(posterior.contains("low_aldosterone_renal_failure"));

@@ -1,8 +1,8 @@
 #!/usr/bin/python3
 # SPDX-License-Identifier: Apache-2.0
-"""Holds the program's JSON and the shipped files against the JSON Schemas (2020-12) in docs/.
+"""Holds the reports of the program against docs/report.schema.json (JSON Schema 2020-12).
 
-usage: check_schemas.py PROGRAM SOURCE_FOLDER
+usage: check_reports.py PROGRAM SOURCE_FOLDER
 """
 import copy
 import json
