@@ -20,11 +20,24 @@ std::string reason(int error) {
     return std::generic_category().message(error);
 }
 
+/// Writes everything; 0, or the error number.
+int write_fully(int descriptor, std::string_view text) {
+    while (!text.empty()) {
+        const ssize_t count = ::write(descriptor, text.data(), text.size());
+        if (count >= 0) {
+            text.remove_prefix(static_cast<std::size_t>(count));
+        } else if (errno != EINTR) {
+            return errno;
+        }
+    }
+    return 0;
+}
+
 /// Owns a temporary file: closed, and removed unless it has been moved into place.
 class TemporaryFile {
   public:
-    explicit TemporaryFile(const std::string& beside) : name_(beside + ".XXXXXX") {
-        descriptor_ = mkstemp(name_.data());
+    explicit TemporaryFile(const std::string& beside)
+        : name_(beside + ".XXXXXX"), descriptor_(mkstemp(name_.data())) {
         if (descriptor_ < 0) {
             throw OutputError(fmt::format("cannot write {}: {}", beside, reason(errno)));
         }
@@ -43,15 +56,8 @@ class TemporaryFile {
     }
 
     void write_all(std::string_view text) {
-        while (!text.empty()) {
-            const ssize_t count = ::write(descriptor_, text.data(), text.size());
-            if (count < 0) {
-                if (errno == EINTR) {
-                    continue;
-                }
-                throw OutputError(fmt::format("cannot write {}: {}", name_, reason(errno)));
-            }
-            text.remove_prefix(static_cast<std::size_t>(count));
+        if (const int error = write_fully(descriptor_, text); error != 0) {
+            throw OutputError(fmt::format("cannot write {}: {}", name_, reason(error)));
         }
         // mkstemp gives 0600; a result is readable as any file the user makes.
         const mode_t mask = umask(0);
@@ -70,9 +76,24 @@ class TemporaryFile {
 
   private:
     std::string name_;
-    int descriptor_ = -1;
+    int descriptor_;
     bool moved_ = false;
 };
+
+void write_to_device(const std::string& path, std::string_view text) {
+    const int descriptor =
+        ::open(path.c_str(), O_WRONLY | O_CLOEXEC);  // NOLINT(cppcoreguidelines-pro-type-vararg)
+    if (descriptor < 0) {
+        throw OutputError(fmt::format("cannot write {}: {}", path, reason(errno)));
+    }
+    int error = write_fully(descriptor, text);
+    if (close(descriptor) != 0 && error == 0) {
+        error = errno;
+    }
+    if (error != 0) {
+        throw OutputError(fmt::format("cannot write {}: {}", path, reason(error)));
+    }
+}
 
 }  // namespace
 
@@ -91,17 +112,7 @@ void write_whole(const std::string& path, std::string_view text) {
         if (S_ISDIR(status.st_mode)) {
             throw OutputError(fmt::format("cannot write {}: it is a folder", path));
         }
-        std::FILE* file = std::fopen(path.c_str(), "w");
-        bool good = file != nullptr && std::fwrite(text.data(), 1, text.size(), file) == text.size();
-        int error = errno;
-        // What is still buffered is written on closing: that may be where a full device is noticed.
-        if (file != nullptr && std::fclose(file) != 0 && good) {
-            good = false;
-            error = errno;
-        }
-        if (!good) {
-            throw OutputError(fmt::format("cannot write {}: {}", path, reason(error)));
-        }
+        write_to_device(path, text);
         return;
     }
     TemporaryFile file(path);
