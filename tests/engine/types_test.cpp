@@ -2,8 +2,6 @@
 // What must not compile, as facts the compiler checks. Each "not" stands beside a "yes", so that a misspelt
 // test fails.
 
-#include <gtest/gtest.h>
-
 #include <type_traits>
 
 #include "steelyard/engine/index.hpp"
@@ -86,9 +84,5 @@ static_assert(!std::is_convertible_v<int, CauseIndex> && !std::is_convertible_v<
 static_assert(!addable<CauseIndex, CauseIndex> && !addable<CauseIndex, int>);
 static_assert(CauseIndex{1} < CauseIndex{2} && BandIndex{3} == BandIndex{3} &&
               FindingIndex{1} != FindingIndex{0});
-
-TEST(Types, AreCheckedByTheCompiler) {
-    SUCCEED() << "the assertions above hold, or this file would not compile";
-}
 
 }  // namespace
