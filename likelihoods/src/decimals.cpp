@@ -34,8 +34,10 @@ Decimals decimals_of(std::string_view quantity) {
 
 int decimals_needed(double limit) {
     int needed = 0;
-    for (double scale = 1.0; needed < 4 && !meets(std::round(limit * scale) / scale, limit); scale *= 10.0) {
+    double scale = 1.0;
+    while (needed < 4 && !meets(std::round(limit * scale) / scale, limit)) {
         ++needed;
+        scale *= 10.0;
     }
     return needed;
 }

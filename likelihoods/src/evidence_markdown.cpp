@@ -240,6 +240,7 @@ class Writer {
 
     std::string titles(const std::vector<std::string>& findings) const {
         std::vector<std::string> names;
+        names.reserve(findings.size());
         for (const std::string& finding : findings) {
             names.push_back(escaped(detail::in_sentence(set_.title_of(finding))));
         }
