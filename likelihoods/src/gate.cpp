@@ -129,7 +129,7 @@ class Examination {
 
     /// Bicarbonate with, where it was not measured as such, what it was taken from.
     std::string bicarbonate_words() const {
-        const std::string words = bicarbonate_.words_beside(settings_.bicarbonate_low.value);
+        std::string words = bicarbonate_.words_beside(settings_.bicarbonate_low.value);
         const QuantityValue& quantity = bicarbonate_.quantity();
         if (quantity.origin != Origin::computed || quantity.from.empty()) {
             return words;
