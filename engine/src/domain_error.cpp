@@ -17,7 +17,7 @@ std::string number(double value) {
         return value > 0 ? "inf" : "-inf";
     }
     std::array<char, 32> text{};
-    const auto end = std::to_chars(text.data(), text.data() + text.size(), value).ptr;
+    auto* const end = std::to_chars(text.data(), text.data() + text.size(), value).ptr;
     return {text.data(), end};
 }
 

@@ -38,7 +38,7 @@ std::string range_yaml(const PriorCause& cause, double printed_odds) {
     if (!(parse_odds(low).value_or(0.0) <= printed_odds && printed_odds <= parse_odds(high).value_or(0.0))) {
         return {};
     }
-    return fmt::format(", range: [\"{}\", \"{}\"]", low, high);
+    return fmt::format(R"(, range: ["{}", "{}"])", low, high);
 }
 
 std::string grounds_yaml(const PriorCause& cause) {

@@ -23,7 +23,7 @@ std::string_view trimmed(std::string_view text) noexcept {
 
 /// Three significant digits of a number >= 1, without an exponent: 3.4, 24, 1230000.
 std::string three_digits(double number) {
-    const std::string rounded = fmt::format("{:.3g}", number);
+    std::string rounded = fmt::format("{:.3g}", number);
     if (rounded.find('e') == std::string::npos) {
         return rounded;
     }

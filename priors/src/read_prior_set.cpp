@@ -108,7 +108,7 @@ void read_range(const Node& node, const std::string& what, GivenAs form, std::op
     if (node.kind != document::Kind::sequence || node.items.size() != 2) {
         faults.add(node.where(), Code::bad_interval,
                    what + " must be a list of two values, the low one first",
-                   form == GivenAs::odds_against_rest ? "such as [\"1:6\", \"1:2\"]" : "such as [2, 8]");
+                   form == GivenAs::odds_against_rest ? R"(such as ["1:6", "1:2"])" : "such as [2, 8]");
         return;
     }
     const Node& first = node.items.front();
