@@ -5,6 +5,7 @@
 #include <atomic>
 #include <exception>
 #include <mutex>
+#include <system_error>
 #include <thread>
 #include <vector>
 
@@ -35,7 +36,11 @@ void run_in_parallel(Eigen::Index count, int threads, const std::function<void(E
     {
         std::vector<std::jthread> helpers;
         for (Eigen::Index i = 1; i < std::min<Eigen::Index>(threads, count); ++i) {
-            helpers.emplace_back(work, false);
+            try {
+                helpers.emplace_back(work, false);
+            } catch (const std::system_error&) {
+                break;  // no more threads to be had: those there are do the work
+            }
         }
         work(true);
     }

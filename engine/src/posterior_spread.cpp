@@ -64,9 +64,11 @@ class Draws {
             array->setZero(causes);
         }
         for (Eigen::Index i = 0; i < posterior_.rows(); ++i) {
-            Eigen::Index leader = 0;
-            posterior_.row(i).maxCoeff(&leader);
-            spread.leads(leader) += 1.0;
+            const double largest = posterior_.row(i).maxCoeff();
+            const auto tied = static_cast<double>((posterior_.row(i) == largest).count());
+            for (Eigen::Index k = 0; k < causes; ++k) {
+                spread.leads(k) += posterior_(i, k) == largest ? 1.0 / tied : 0.0;
+            }
         }
         spread.leads /= count;
         const double tail = (1.0 - options_.level) / 2.0;
@@ -148,9 +150,16 @@ PosteriorSpread posterior_spread(const UncertainPosterior& problem, const Spread
     Eigen::Index wanted = options.draws.value_or(first_draws);
     draws.extend_to(wanted);
     PosteriorSpread spread = draws.summary();
-    while (!options.draws && wanted < most_draws_unasked &&
-           std::max(spread.low_error.maxCoeff(), spread.high_error.maxCoeff()) > options.aim) {
-        wanted *= 2;
+    while (!options.draws && wanted < most_draws_unasked) {
+        const double error = std::max(spread.low_error.maxCoeff(), spread.high_error.maxCoeff());
+        if (error <= options.aim) {
+            break;
+        }
+        // The error falls with the root of the number; a tenth more, because it is itself an estimate.
+        const double factor = std::clamp(1.1 * (error / options.aim) * (error / options.aim), 1.25, 16.0);
+        const auto blocks = static_cast<Eigen::Index>(
+            std::ceil(factor * static_cast<double>(wanted) / static_cast<double>(UncertainPosterior::block)));
+        wanted = std::min(blocks * UncertainPosterior::block, most_draws_unasked);
         draws.extend_to(wanted);
         spread = draws.summary();
     }

@@ -21,6 +21,7 @@ using Quick = boost_policies::normalise<BoostPolicy, boost_policies::promote_dou
 constexpr double reach = 6.6;  // normal deviates; 2^-33 lies at -6.34
 constexpr int nodes_in_z = 45;
 constexpr double step_in_z = 2.0 * reach / (nodes_in_z - 1);
+constexpr double large_shape = 1e6;
 constexpr double least_log = -690.0;  // ln 1e-300: no table tells smaller shares apart
 
 double normal_deviate(double lower) {
@@ -91,15 +92,23 @@ QuantileTable log_beta_quantiles(double a, double b) {
 }
 
 QuantileTable log_gamma_quantiles(double shape) {
+    if (shape > large_shape) {
+        // The cube root of a Gamma variable is nearly normal (Wilson and Hilferty 1931, from memory): right
+        // to 1e-9 of ln x from here on, where the exact series no longer converges.
+        return QuantileTable([shape](double lower, double upper) {
+            const double z = lower <= upper ? normal_deviate(lower) : -normal_deviate(upper);
+            return std::log(shape) + 3.0 * std::log1p(-1.0 / (9.0 * shape) + z / (3.0 * std::sqrt(shape)));
+        });
+    }
     const double log_c = -boost::math::lgamma(shape + 1.0, Quick());
     return QuantileTable([=](double lower, double upper) {
+        // A weight may be as small as it likes: only its logarithm is kept, and no share is told of it.
         const double small = leading_log(lower, shape, log_c);
         if (small < -600.0) {
-            return std::max(small, least_log);
+            return small;
         }
-        return std::max(std::log(lower <= upper ? boost::math::gamma_p_inv(shape, lower, Quick())
-                                                : boost::math::gamma_q_inv(shape, upper, Quick())),
-                        least_log);
+        return std::log(lower <= upper ? boost::math::gamma_p_inv(shape, lower, Quick())
+                                       : boost::math::gamma_q_inv(shape, upper, Quick()));
     });
 }
 

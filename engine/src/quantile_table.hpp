@@ -3,8 +3,8 @@
 // A quantile function tabulated for drawing by inversion: exact at nodes spread evenly in normal deviates,
 // joined by a cubic spline there, and read on a grid of u that has 32 points in every octave from 2^-33 to
 // 1/2 and the same from the other end. One look-up costs a few nanoseconds. The value drawn is
-// that of a u whose normal deviate is off by less than 2e-3 (tested, for Beta shapes from 0.05 and 0.5 to thousands); 100,000
-// draws leave an error of 3e-3.
+// that of a u whose normal deviate is off by less than 2e-3 (tested, for Beta shapes from 0.05 and 0.5 to
+// thousands); 100,000 draws leave an error of 3e-3.
 
 #include <bit>
 #include <cstdint>

@@ -15,6 +15,32 @@ namespace {
 constexpr double infinity = std::numeric_limits<double>::infinity();
 constexpr double least_share = 1e-300;
 
+/// P(Z <= z) by a table with 1/256 between its points, straight between them: off by less than 5e-7, and
+/// several times as fast as the error function.
+class NormalTable {
+  public:
+    NormalTable() {
+        for (int i = 0; i <= 2 * reach * cells; ++i) {
+            values_.push_back(upper_tail(-(static_cast<double>(i) / cells - reach)));
+        }
+    }
+    double lower(double z) const noexcept {
+        const double place = (std::clamp(z, -static_cast<double>(reach), reach - 1e-9) + reach) * cells;
+        const auto cell = static_cast<std::size_t>(place);
+        return values_[cell] + (place - static_cast<double>(cell)) * (values_[cell + 1] - values_[cell]);
+    }
+
+  private:
+    static constexpr int reach = 8;
+    static constexpr int cells = 256;
+    std::vector<double> values_;
+};
+
+const NormalTable& normal_table() {
+    static const NormalTable table;
+    return table;
+}
+
 class DirichletSampler final : public RowSampler {
   public:
     DirichletSampler(const DirichletLaw& law, const std::vector<Eigen::Index>& cells) {
@@ -60,6 +86,10 @@ class SummarySampler final : public RowSampler {
             const double edge = law.scale == Scale::log ? std::log(law.edges(i)) : law.edges(i);
             edges_.push_back((edge - law.mean) / law.sd);
         }
+        seen_.assign(edges_.size() + 1, false);
+        for (const Eigen::Index cell : cells_) {
+            seen_[static_cast<std::size_t>(cell)] = true;
+        }
     }
 
     Eigen::Index coordinates() const noexcept override { return 2; }
@@ -68,12 +98,13 @@ class SummarySampler final : public RowSampler {
               const Eigen::Ref<const Eigen::ArrayXd>& /*reference*/,
               Eigen::Ref<Eigen::ArrayXd> out) const override {
         const QuantileTable& normal = normal_quantiles();
+        const NormalTable& table = normal_table();
         for (Eigen::Index i = 0; i < out.size(); ++i) {
             // (edge - mean) / sigma, with sigma = sd / relative sd and mean = stated mean + sigma z /
             // sqrt(n).
             const double ratio = relative_sd_.at(uniforms(i, 0));
             const double shift = normal.at(uniforms(i, 1)) / root_n_;
-            out(i) = least_ > 0.0 ? raised_share(ratio, shift) : share(ratio, shift);
+            out(i) = least_ > 0.0 ? raised_share(table, ratio, shift) : share(table, ratio, shift);
         }
         out = out.max(least_share).min(1.0).log();
     }
@@ -83,38 +114,40 @@ class SummarySampler final : public RowSampler {
         return edges_[edge] * ratio - shift;
     }
 
-    double mass(Eigen::Index band, double ratio, double shift) const {
+    /// By the table; small shares, of which it would leave too few digits, by the error function.
+    double mass(const NormalTable& normal, Eigen::Index band, double ratio, double shift) const {
+        constexpr double large_enough = 2e-3;  // the table's error is then below 5e-4 of the share
         const auto b = static_cast<std::size_t>(band);
         const double low = b == 0 ? -infinity : standardised(b - 1, ratio, shift);
         const double high = b == edges_.size() ? infinity : standardised(b, ratio, shift);
-        return normal_mass(low, high);
+        const double share = normal.lower(high) - normal.lower(low);
+        return share > large_enough ? share : normal_mass(low, high);
     }
 
-    double share(double ratio, double shift) const {
+    double share(const NormalTable& normal, double ratio, double shift) const {
         double sum = 0.0;
         for (const Eigen::Index cell : cells_) {
-            sum += mass(cell, ratio, shift);
+            sum += mass(normal, cell, ratio, shift);
         }
         return sum;
     }
 
     /// As keep_at_least() does: every band at least `least_`, then divided by their sum.
-    double raised_share(double ratio, double shift) const {
+    double raised_share(const NormalTable& normal, double ratio, double shift) const {
         double all = 0.0;
         double seen = 0.0;
         double below = 0.0;  // P(below the band's lower edge)
         for (std::size_t band = 0; band <= edges_.size(); ++band) {
-            const double above = band == edges_.size() ? 1.0 : upper_tail(-standardised(band, ratio, shift));
-            const double raised = std::max(above - below, least_);
-            below = above;
+            const double up_to = band == edges_.size() ? 1.0 : normal.lower(standardised(band, ratio, shift));
+            const double raised = std::max(up_to - below, least_);
+            below = up_to;
             all += raised;
-            if (std::find(cells_.begin(), cells_.end(), static_cast<Eigen::Index>(band)) != cells_.end()) {
-                seen += raised;
-            }
+            seen += seen_[band] ? raised : 0.0;
         }
         return seen / all;
     }
 
+    std::vector<bool> seen_;  // by band
     std::vector<Eigen::Index> cells_;
     QuantileTable relative_sd_;
     std::vector<double> edges_;  // in standard deviations from the mean

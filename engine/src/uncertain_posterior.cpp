@@ -19,6 +19,9 @@ namespace {
 constexpr double infinity = std::numeric_limits<double>::infinity();
 constexpr const char* here = "UncertainPosterior";
 
+/// Two streams a row; priors have theirs from 0xf0000000 on.
+constexpr std::uint32_t largest_stream = (1U << 30U) - 1U;
+
 [[noreturn]] void refuse(std::string_view argument, Eigen::Index index, double value,
                          std::string_view requirement) {
     throw DomainError(here, argument, index, std::nullopt, value, requirement);
@@ -56,8 +59,11 @@ void check_row(const UncertainProblem& problem, std::size_t index) {
         refuse("reference", at, static_cast<double>(*row.reference),
                "absent: only ratios are against another row");
     }
-    if (row.stream > 0x7fffffffU) {
-        refuse("stream", at, static_cast<double>(row.stream), "at most 2^31 - 1");
+    if (!(row.least >= 0.0 && row.least < 1.0)) {
+        refuse("least", at, row.least, "in [0, 1)");
+    }
+    if (row.stream > largest_stream) {
+        refuse("stream", at, static_cast<double>(row.stream), "below 2^30");
     }
 }
 
@@ -128,7 +134,8 @@ struct UncertainPosterior::Prepared {
 
     Eigen::Index coordinates(Eigen::Index source) const {
         if (source == problem.weight.size()) {
-            return static_cast<Eigen::Index>(priors.size());
+            return std::count_if(priors.begin(), priors.end(),
+                                 [](const auto& prior) { return !prior.is_known(); });
         }
         Eigen::Index sum = 0;
         for (const std::size_t row : rows_of_finding[static_cast<std::size_t>(source)]) {
@@ -148,11 +155,17 @@ struct UncertainPosterior::Prepared {
     }
 
     void add_priors(const Eigen::Ref<const Eigen::ArrayXXd>& uniforms, Eigen::ArrayXXd& scores) const {
+        Eigen::Index used = 0;
         for (Eigen::Index k = 0; k < scores.cols(); ++k) {
             const detail::PriorSampler& prior = priors[static_cast<std::size_t>(k)];
-            for (Eigen::Index i = 0; i < scores.rows(); ++i) {
-                scores(i, k) += prior.log_weight(uniforms(i, k));
+            if (prior.is_known()) {
+                scores.col(k) += prior.log_weight(0.5);
+                continue;
             }
+            for (Eigen::Index i = 0; i < scores.rows(); ++i) {
+                scores(i, k) += prior.log_weight(uniforms(i, used));
+            }
+            ++used;
         }
     }
 
@@ -173,6 +186,10 @@ struct UncertainPosterior::Prepared {
                          reference < 0 ? Eigen::Ref<const Eigen::ArrayXd>(none)
                                        : Eigen::Ref<const Eigen::ArrayXd>(drawn.col(reference)),
                          drawn.col(static_cast<Eigen::Index>(i)));
+            if (problem.rows[rows[i]].least > 0.0) {
+                drawn.col(static_cast<Eigen::Index>(i)) =
+                    drawn.col(static_cast<Eigen::Index>(i)).max(std::log(problem.rows[rows[i]].least)).eval();
+            }
             used += sampler.coordinates();
         }
         for (Eigen::Index k = 0; k < scores.cols(); ++k) {
@@ -189,12 +206,10 @@ struct UncertainPosterior::Prepared {
             fill_uniform(seed, stream, first, {out.col(column).data(), static_cast<std::size_t>(block)});
         };
         if (source == problem.weight.size()) {
-            for (Eigen::Index k = 0; k < out.cols(); ++k) {
-                const auto cause = static_cast<std::size_t>(k);
-                if (priors[cause].is_known()) {
-                    out.col(k).setConstant(0.5);  // not looked at
-                } else {
-                    fill(k, prior_streams + problem.priors[cause].stream);
+            Eigen::Index used = 0;
+            for (std::size_t k = 0; k < priors.size(); ++k) {
+                if (!priors[k].is_known()) {
+                    fill(used++, prior_streams + problem.priors[k].stream);
                 }
             }
             return out;
@@ -285,12 +300,13 @@ UncertainPosterior::LogInterval UncertainPosterior::row_interval(std::size_t row
     constexpr const char* function = "UncertainPosterior::row_interval";
     check_index(function, "row", static_cast<Eigen::Index>(row),
                 static_cast<Eigen::Index>(prepared_->samplers.size()));
-    if (!(level > 0.0 && level < 1.0)) {
-        throw DomainError(function, "level", std::nullopt, std::nullopt, level, "in (0, 1)");
+    if (!(level > 0.0 && level <= 1.0 - 0x1p-31)) {
+        throw DomainError(function, "level", std::nullopt, std::nullopt, level, "in (0, 1 - 2^-31]");
     }
     const UncertainRow& own = prepared_->problem.rows[row];
     const detail::RowSampler& sampler = *prepared_->samplers[row];
     const double tail = (1.0 - level) / 2.0;
+    const double floor = own.least > 0.0 ? std::log(own.least) : -infinity;
     Eigen::ArrayXd shares;
     if (sampler.coordinates() == 1) {
         const Eigen::ArrayXXd ends = (Eigen::ArrayXXd(2, 1) << tail, 1.0 - tail).finished();
@@ -300,7 +316,7 @@ UncertainPosterior::LogInterval UncertainPosterior::row_interval(std::size_t row
         }
         shares.resize(2);
         sampler.fill(ends, reference, shares);
-        return {shares(0), shares(1)};
+        return {std::max(shares(0), floor), std::max(shares(1), floor)};
     }
     // Two numbers a draw: the quantiles over an even grid of both, 48 by 48: right to 1 % of the width.
     constexpr Eigen::Index side = 48;
@@ -318,8 +334,8 @@ UncertainPosterior::LogInterval UncertainPosterior::row_interval(std::size_t row
         std::nth_element(shares.data(), shares.data() + rank, shares.data() + shares.size());
         return shares(rank);
     };
-    const double low = quantile(tail);
-    return {low, quantile(1.0 - tail)};
+    const double low = std::max(quantile(tail), floor);
+    return {low, std::max(quantile(1.0 - tail), floor)};
 }
 
 Eigen::ArrayXXd softmax_rows(const Eigen::Ref<const Eigen::ArrayXXd>& scores) {

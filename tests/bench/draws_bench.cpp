@@ -21,9 +21,12 @@ using steelyard::engine::SummaryLaw;
 using steelyard::engine::UncertainPosterior;
 using steelyard::engine::UncertainProblem;
 
-constexpr Eigen::Index causes = 6;
-constexpr Eigen::Index findings = 12;
 constexpr Eigen::Index bands = 5;
+
+struct Size {
+    Eigen::Index causes, findings;
+};
+constexpr Size of_the_peer = {6, 12};
 
 Eigen::ArrayXd alpha_of(Eigen::Index finding, Eigen::Index cause) {
     Eigen::ArrayXd alpha(bands);
@@ -34,7 +37,8 @@ Eigen::ArrayXd alpha_of(Eigen::Index finding, Eigen::Index cause) {
 }
 
 /// @param summaries  rows given as mean and spread instead of counts
-UncertainProblem problem(bool summaries) {
+UncertainProblem problem(const Size& size, bool summaries) {
+    const auto [causes, findings] = size;
     UncertainProblem result;
     result.priors.resize(causes);
     result.row_of.resize(findings, causes);
@@ -84,8 +88,14 @@ int main(int argc, char** argv) {
     }
     const Eigen::Index draws = std::atol(argv[1]);
     for (const int threads : {1, 2}) {
-        run("counts", problem(false), draws, threads);
-        run("summaries", problem(true), draws, threads);
+        run("counts", problem(of_the_peer, false), draws, threads);
+        run("summaries", problem(of_the_peer, true), draws, threads);
+    }
+    std::printf("growth, one thread, rows of means and spreads:\n");
+    for (const Size size : {Size{2, 5}, Size{6, 5}, Size{6, 12}, Size{12, 12}, Size{12, 30}}) {
+        std::printf("%2ld causes %2ld findings  ", static_cast<long>(size.causes),
+                    static_cast<long>(size.findings));
+        run("", problem(size, true), draws, 1);
     }
     std::fflush(stdout);
     const std::string peer = std::string(argv[2]) + " " + argv[3] + " " + argv[1];

@@ -230,6 +230,39 @@ TEST(UncertainPosterior, CountedPriorsAreADirichlet) {
     EXPECT_NEAR(spread.mean(0), 1.0 / 8.0, 5 * spread.sd(0) / std::sqrt(2e5));
 }
 
+/// Weights of very few and of very many patients: the fewer, the less is known; no number of either is too
+/// much.
+TEST(UncertainPosterior, CountedPriorsOfAnySizeAreDrawn) {
+    double spread_before = 0.0;
+    for (const double worth : {1e12, 1e9, 1e7, 1e6, 1e3, 10.0, 0.1, 1e-3, 1e-6}) {
+        UncertainProblem problem = known_priors({1.0, 2.0});
+        for (std::size_t k = 0; k < 2; ++k) {
+            problem.priors[k].law = engine::CountedPrior{worth * (k == 0 ? 1.0 / 3.0 : 2.0 / 3.0)};
+            problem.priors[k].stream = static_cast<std::uint32_t>(k);
+        }
+        SpreadOptions options;
+        options.draws = 40'000;
+        const PosteriorSpread spread = posterior_spread(UncertainPosterior(problem), options);
+        EXPECT_NEAR(spread.mean(0), 1.0 / 3.0, 0.01) << worth;
+        EXPECT_GE(spread.sd(0), 0.99 * spread_before) << worth;
+        // Of a Beta law: sqrt(p (1 - p) / (worth + 1)).
+        EXPECT_TRUE(near_rel(std::sqrt(2.0 / 9.0 / (worth + 1.0)), spread.sd(0), 0.02)) << worth;
+        spread_before = spread.sd(0);
+    }
+}
+
+TEST(UncertainPosterior, AJudgedRowIsNotDrawnBelowItsLeast) {
+    UncertainProblem problem = known_priors({1.0, 1.0});
+    const engine::CompiledRow row = counts_row(array({0, 3}), 0.05);
+    add_finding(problem, {row, row}, 0);
+    problem.rows[0].least = 0.01;
+    const UncertainPosterior posterior(problem);
+    const Eigen::ArrayXXd drawn = posterior.contribution(0, Eigen::ArrayXXd::Constant(1, 2, 0.01));
+    EXPECT_NEAR(std::exp(drawn(0, 0)), 0.01, 1e-15);
+    EXPECT_LT(std::exp(drawn(0, 1)), 1e-9);
+    EXPECT_NEAR(std::exp(posterior.row_interval(0).low), 0.01, 1e-15);
+}
+
 TEST(UncertainPosterior, RowIntervalsAreThoseOfTheirLaws) {
     const UncertainProblem problem = mixed_problem();
     const UncertainPosterior posterior(problem);
@@ -271,6 +304,16 @@ TEST(PosteriorSpread, TheStatedErrorIsTheScatterOverSeeds) {
     const double scatter = std::sqrt((low - low.mean()).square().sum() / (seeds - 1));
     EXPECT_GT(stated.mean(), 0.7 * scatter);
     EXPECT_LT(stated.mean(), 1.4 * scatter);
+}
+
+TEST(PosteriorSpread, CausesThatTieShareADraw) {
+    const UncertainProblem problem = known_priors({2.0, 2.0, 1.0});
+    SpreadOptions options;
+    options.draws = 1000;
+    const PosteriorSpread spread = posterior_spread(UncertainPosterior(problem), options);
+    EXPECT_EQ(spread.leads(0), 0.5);
+    EXPECT_EQ(spread.leads(1), 0.5);
+    EXPECT_EQ(spread.leads(2), 0.0);
 }
 
 TEST(PosteriorSpread, WithoutUncertaintyTheIntervalIsThePosterior) {
@@ -331,6 +374,9 @@ TEST(UncertainPosterior, RefusesWhatHasNoMeaning) {
     refused([](UncertainProblem& p) { p.rows[2].cells = {3}; }, "cell", {2, {}}, 3.0, "a band of its law");
     refused([](UncertainProblem& p) { p.rows[2].log_share = 0.1; }, "log_share", {2, {}}, 0.1,
             "finite and <= 0");
+    refused([](UncertainProblem& p) { p.rows[2].least = 1.0; }, "least", {2, {}}, 1.0, "in [0, 1)");
+    refused([](UncertainProblem& p) { p.rows[2].stream = 1U << 30U; }, "stream", {2, {}}, 0x1p30,
+            "below 2^30");
     refused([](UncertainProblem& p) { p.rows[7].reference = 7; }, "reference", {7, {}}, 7.0,
             "an earlier row");
     refused([](UncertainProblem& p) { p.rows[5].reference = 0; }, "reference", {5, {}}, 0.0,
@@ -342,6 +388,15 @@ TEST(UncertainPosterior, RefusesWhatHasNoMeaning) {
             p.priors[1].law = engine::RangedPrior{1.0, 2.0, false};
         },
         "prior log_low", {1, {}}, 1.0, "finite and not above the value");
+}
+
+TEST(UncertainPosterior, RefusesAnIntervalWithoutTails) {
+    const UncertainPosterior posterior(mixed_problem());
+    for (const double level : {0.0, 1.0, 1.0 - 0x1p-33}) {
+        expect_domain_error([&] { static_cast<void>(posterior.row_interval(0, level)); },
+                            "UncertainPosterior::row_interval", "level", {}, level, "in (0, 1 - 2^-31]");
+    }
+    EXPECT_LT(posterior.row_interval(0, 1.0 - 0x1p-31).low, posterior.row_interval(0).low);
 }
 
 TEST(PosteriorSpread, RefusesAbsurdOptions) {

@@ -16,8 +16,8 @@ namespace steelyard::engine {
 
 struct SpreadOptions {
     std::uint64_t seed = 1;
-    /// How many draws, in [1000, 1e6]. Empty: 16,384, doubled until every end is known to `aim`, at most
-    /// 2^18.
+    /// How many draws, in [1000, 1e6]. Empty: 16,384, and as many more as bring every end to
+    /// `aim`, at most 2^18.
     std::optional<Eigen::Index> draws;
     double level = 0.95;  ///< of the intervals, in (0, 1)
     double aim = 0.005;   ///< Monte-Carlo error of an end that is small enough [1], > 0
@@ -32,8 +32,9 @@ struct PosteriorSpread {
     Eigen::ArrayXd low_error, high_error;  ///< shape (K): their Monte-Carlo standard errors
     Eigen::ArrayXd median, mean,
         sd;  ///< shape (K), over the draws; the mean is not "the" posterior (docs/method.md)
-    Eigen::ArrayXd
-        leads;  ///< shape (K): share of draws in which the cause has the largest posterior; sums to 1
+    /// Shape (K): share of draws in which the cause has the largest posterior, a draw divided among those
+    /// that tie; sums to 1.
+    Eigen::ArrayXd leads;
     Eigen::ArrayXd
         leads_error;  ///< shape (K): binomial standard error, never 0: at least that of half a draw
 };

@@ -27,8 +27,9 @@ struct UncertainRow {
     double log_share = 0.0;           ///< ln P(cells | cause) as weighed [nats], <= 0
     std::optional<std::size_t>
         reference;  ///< RatioLaw: an earlier row of the same finding that the ratios are against
-    std::uint32_t stream =
-        0;  ///< its random streams are 2 stream and 2 stream + 1; the same row has the same in every case
+    /// Its random streams are 2 stream and 2 stream + 1; below 2^30. The same row has the same in every case.
+    std::uint32_t stream = 0;
+    double least = 0.0;  ///< no drawn share is smaller [1]; in [0, 1); 0 unless the row is judged
 };
 
 /// A prior weight that is known.
@@ -64,8 +65,8 @@ class UncertainPosterior {
     /// of its domain
     explicit UncertainPosterior(const UncertainProblem& problem);
     ~UncertainPosterior();
-    UncertainPosterior(UncertainPosterior&&) noexcept;
-    UncertainPosterior& operator=(UncertainPosterior&&) noexcept;
+    UncertainPosterior(UncertainPosterior&& other) noexcept;
+    UncertainPosterior& operator=(UncertainPosterior&& other) noexcept;
     UncertainPosterior(const UncertainPosterior&) = delete;
     UncertainPosterior& operator=(const UncertainPosterior&) = delete;
 
@@ -93,7 +94,7 @@ class UncertainPosterior {
     static constexpr Eigen::Index block = 1024;
 
     /// The interval of ln P(cells | cause) of one row alone [nats], its reference held fixed.
-    /// @param row  index into `rows`   @param level  in (0, 1)   @throws DomainError
+    /// @param row  index into `rows`   @param level  in (0, 1 - 2^-31]   @throws DomainError
     struct LogInterval {
         double low = 0.0, high = 0.0;
     };
