@@ -1,12 +1,19 @@
 // SPDX-License-Identifier: Apache-2.0
-// steelyard weigh: posterior and ledger for each case.
+// steelyard weigh: posterior, what it rests on and how sure it is, for each case.
 #include <fmt/format.h>
 
 #include <algorithm>
+#include <charconv>
+#include <limits>
+#include <optional>
 #include <ostream>
+#include <thread>
 
 #include "open_inputs.hpp"
+#include "progress.hpp"
+#include "sensitivity_parts.hpp"
 #include "steelyard/cli/commands.hpp"
+#include "steelyard/cli/numbers.hpp"
 #include "steelyard/cli/output.hpp"
 #include "steelyard/cli/read_cases.hpp"
 #include "steelyard/cli/report.hpp"
@@ -17,11 +24,15 @@ namespace {
 constexpr const char* weigh_description =
     "Weigh the causes of a normal-gap metabolic acidosis for each case: urgent values first, then whether "
     "the question "
-    "applies, the probability of each cause, what that rests on, what was set aside and what is missing.";
+    "applies, the probability of each cause with its interval, what would overturn it, what to look at next, "
+    "and what it "
+    "rests on.";
 
 constexpr const char* weigh_footer = R"(Examples:
   steelyard weigh docs/cases/larkmoor-002.yaml
   steelyard weigh case.yaml --priors general-ward
+  steelyard weigh case.yaml --brief --burden bedside
+  steelyard weigh case.yaml --full --until 0.9 --epsilon 0.1
   steelyard weigh *.yaml --as json --out reports.json
   cat case.yaml | steelyard weigh -
 
@@ -52,27 +63,106 @@ priors::PriorSet without_excluded(const priors::PriorSet& set, const likelihoods
     return present.empty() ? set : priors::without(set, present);
 }
 
-std::string write_text(const std::vector<Weighing>& weighings, const likelihoods::TableSet& tables,
-                       const Provenance& provenance, bool colour) {
+/// A number typed as an option. @throws UsageError
+template <class Number>
+Number number_option(const char* option, const std::string& text, Number low, Number high,
+                     const std::string& must_be) {
+    Number value{};
+    const auto [end, error] = std::from_chars(text.data(), text.data() + text.size(), value);
+    if (error != std::errc() || end != text.data() + text.size() || !(value >= low && value <= high)) {
+        throw UsageError(fmt::format("{} {}: must be {}", option, visible(text), must_be));
+    }
+    return value;
+}
+
+/// A share strictly between 0 and 1, or with the ends. @throws UsageError
+double share_option(const char* option, const std::string& text, bool with_ends) {
+    const double value = number_option(
+        option, text, 0.0, 1.0,
+        fmt::format("a fraction {}, as 0.9 for 90 %", with_ends ? "from 0 to 1" : "between 0 and 1"));
+    if (!with_ends && (value == 0.0 || value == 1.0)) {
+        throw UsageError(
+            fmt::format("{} {}: must be a fraction between 0 and 1, as 0.9 for 90 %", option, text));
+    }
+    return value;
+}
+
+SensitivityOptions sensitivity_options(const WeighCommand& command) {
+    SensitivityOptions options;
+    options.seed =
+        number_option<std::uint64_t>("--seed", command.seed, 0, std::numeric_limits<std::uint64_t>::max(),
+                                     "a whole number from 0 to 2^64 - 1");
+    if (!command.draws.empty()) {
+        options.draws = number_option<Eigen::Index>("--draws", command.draws, 1000, 1'000'000,
+                                                    "a whole number from 1000 to 1000000");
+    }
+    options.threads =
+        command.threads.empty()
+            ? static_cast<int>(std::clamp(std::thread::hardware_concurrency(), 1U, 256U))
+            : number_option("--threads", command.threads, 1, 256, "a whole number from 1 to 256");
+    if (!command.epsilon.empty()) {
+        options.epsilon = share_option("--epsilon", command.epsilon, true);
+    }
+    if (!command.until.empty()) {
+        options.until = share_option("--until", command.until, false);
+    }
+    options.burden = command.burden;
+    return options;
+}
+
+/// A case with what is said about how sure its answer is; nothing of it when it was not weighed.
+struct Weighed {
+    Weighing weighing;
+    std::optional<Sensitivity> sensitivity;
+
+    const Sensitivity* sure() const noexcept { return sensitivity ? &*sensitivity : nullptr; }
+};
+
+/// A target that no leader can be asked to reach is a mistake on the command line, not a result.
+void check_target(double target, const std::vector<Weighed>& cases) {
+    const Weighed* last = nullptr;
+    for (const Weighed& one : cases) {
+        if (!one.weighing.weighed) {
+            continue;
+        }
+        const WeighedCause& leader = one.weighing.causes[one.weighing.ranking[0]];
+        if (target > std::min(leader.prior, leader.posterior)) {
+            return;
+        }
+        last = &one;
+    }
+    if (last != nullptr) {
+        const WeighedCause& leader = last->weighing.causes[last->weighing.ranking[0]];
+        throw UsageError(fmt::format(
+            "--until {}: not above the prior of the leading cause (\"{}\", {} in {}), so there is nothing to "
+            "reach; ask for "
+            "a higher posterior",
+            plain(target), leader.title, percent(leader.prior), visible(last->weighing.panel.case_id)));
+    }
+}
+
+std::string write_text(const std::vector<Weighed>& cases, const likelihoods::TableSet& tables,
+                       const Provenance& provenance, Length length, bool colour) {
     std::string text;
-    for (const Weighing& weighing : weighings) {
-        text += (text.empty() ? "" : "\n\n") + report_text(weighing, tables, provenance, colour);
+    for (const Weighed& one : cases) {
+        text += (text.empty() ? "" : "\n\n") +
+                report_text(one.weighing, one.sure(), tables, provenance, length, colour);
     }
     return text;
 }
 
-std::string write_json(const std::vector<Weighing>& weighings, const likelihoods::TableSet& tables,
+std::string write_json(const std::vector<Weighed>& cases, const likelihoods::TableSet& tables,
                        const Provenance& provenance, bool one_a_line) {
     if (one_a_line) {
         std::string text;
-        for (const Weighing& weighing : weighings) {
-            text += dumped(report_json(weighing, tables, provenance)) + "\n";
+        for (const Weighed& one : cases) {
+            text += dumped(report_json(one.weighing, one.sure(), tables, provenance)) + "\n";
         }
         return text;
     }
     nlohmann::ordered_json all = nlohmann::ordered_json::array();
-    for (const Weighing& weighing : weighings) {
-        all.push_back(report_json(weighing, tables, provenance));
+    for (const Weighed& one : cases) {
+        all.push_back(report_json(one.weighing, one.sure(), tables, provenance));
     }
     return dumped(all, 2) + "\n";
 }
@@ -100,6 +190,42 @@ CLI::App* setup(CLI::App& app, WeighCommand& command) {
         ->take_all();
     weigh->add_flag("--weigh-anyway", command.weigh_anyway,
                     "Weigh a case that is out of scope, saying so in the report");
+    CLI::Option* brief = weigh->add_flag(
+        "--brief", command.brief, "One screen of text: urgent values, probabilities, what to look at next");
+    weigh
+        ->add_flag("--full", command.full,
+                   "All of the text: every sensitivity, every figure's basis and source")
+        ->excludes(brief);
+    weigh
+        ->add_option(
+            "--burden", command.burden,
+            "Of what to look at next, only what asks at most this much: bedside, routine or specialised")
+        ->capture_default_str()
+        ->check(CLI::IsMember(burdens()))
+        ->type_name("HOW_MUCH");
+    weigh
+        ->add_option("--until", command.until,
+                     "Also tell at which prior the leading cause has this posterior, as 0.9")
+        ->type_name("POSTERIOR");
+    weigh
+        ->add_option(
+            "--epsilon", command.epsilon,
+            "Also tell the range of each posterior when this share of the prior may be anything, as 0.1")
+        ->type_name("SHARE");
+    weigh
+        ->add_option("--draws", command.draws,
+                     "Draws of tables and priors for the intervals, 1000 to 1000000; as many as the interval "
+                     "ends need "
+                     "when not given")
+        ->type_name("N");
+    weigh->add_option("--seed", command.seed, "Seed of the draws; the same seed gives the same report")
+        ->capture_default_str()
+        ->type_name("N");
+    weigh
+        ->add_option(
+            "--threads", command.threads,
+            "Threads to draw on, 1 to 256; all of the machine's when not given. No result depends on it")
+        ->type_name("N");
     weigh
         ->add_option("--as", command.as,
                      "How to write the result: text, json (an array) or ndjson (a line each)")
@@ -112,6 +238,7 @@ CLI::App* setup(CLI::App& app, WeighCommand& command) {
 }
 
 int run(const WeighCommand& command, const Streams& streams) {
+    SensitivityOptions options = sensitivity_options(command);
     document::Diagnostics faults;
     const auto tables = open_tables(command.tables, faults);
     const auto all_priors =
@@ -129,23 +256,46 @@ int run(const WeighCommand& command, const Streams& streams) {
     const priors::PriorSet priors = without_excluded(*all_priors, *tables, command.exclude);
     const Provenance provenance = provenance_of(*tables, priors);
 
-    std::vector<Weighing> weighings;
+    std::vector<Weighed> cases;
     std::size_t weighed = 0;
     for (likelihoods::Panel& panel : panels) {
-        weighings.push_back(
-            weigh_case(*tables, priors, std::move(panel), {command.weigh_anyway, command.exclude}));
-        weighed += weighings.back().weighed ? 1U : 0U;
+        cases.push_back(
+            {weigh_case(*tables, priors, std::move(panel), {command.weigh_anyway, command.exclude}),
+             std::nullopt});
+        weighed += cases.back().weighing.weighed ? 1U : 0U;
+    }
+    if (options.until) {
+        check_target(*options.until, cases);
+    }
+    {
+        Progress progress(streams.err, streams.terminal_err);
+        const auto count = static_cast<double>(weighed);
+        double done_before = 0.0;
+        for (Weighed& one : cases) {
+            if (one.weighing.weighed) {
+                options.progress = [&](double done) {
+                    progress.tell(fmt::format("case {:.0f} of {:.0f}", done_before + 1.0, count),
+                                  (done_before + done) / count);
+                };
+                one.sensitivity = sensitivity_of(*tables, priors, one.weighing, options);
+                ++done_before;
+            }
+        }
     }
     const bool to_file = !command.out.empty() && command.out != "-";
-    const std::string text = command.as == "text"
-                                 ? write_text(weighings, *tables, provenance, streams.colour_out && !to_file)
-                                 : write_json(weighings, *tables, provenance, command.as == "ndjson");
+    Length length = Length::ordinary;
+    if (command.brief || command.full) {
+        length = command.brief ? Length::brief : Length::full;
+    }
+    const std::string text =
+        command.as == "text" ? write_text(cases, *tables, provenance, length, streams.colour_out && !to_file)
+                             : write_json(cases, *tables, provenance, command.as == "ndjson");
     write_result(command.out, text, streams.out);
-    for (const Weighing& weighing : weighings) {
-        if (!weighing.weighed) {
+    for (const Weighed& one : cases) {
+        if (!one.weighing.weighed) {
             streams.err << wrapped(
                 fmt::format("steelyard: {} was not weighed, it is out of scope: {}",
-                            visible(weighing.panel.case_id), visible(weighing.gate.reasons.front())),
+                            visible(one.weighing.panel.case_id), visible(one.weighing.gate.reasons.front())),
                 "", "  ");
         }
     }

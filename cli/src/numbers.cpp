@@ -23,6 +23,25 @@ std::string percent(double probability) {
     return fmt::format("{:.0f} %", value);
 }
 
+int supported_step(double low, double high) {
+    const double width = high - low;
+    if (width <= 0.05) {
+        return 1;
+    }
+    return width <= 0.3 ? 5 : 10;
+}
+
+std::string percent_in_steps(double probability, int step) {
+    const auto rounded = static_cast<int>(std::lround(100.0 * probability / step)) * step;
+    if (rounded < step) {
+        return fmt::format("<{} %", step);
+    }
+    if (rounded > 100 - step) {
+        return fmt::format(">{} %", 100 - step);
+    }
+    return fmt::format("{} %", rounded);
+}
+
 std::string plain(double value, int digits) {
     // fmt's general form is shortest for its precision but turns to exponents early; clinicians read
     // decimals.

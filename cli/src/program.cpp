@@ -97,7 +97,8 @@ int run_program(int argc, const char* const* argv, std::ostream& out, std::ostre
                            chosen.empty() ? "" : chosen.front()->get_name() + " ");
         return usage;
     }
-    const Streams streams{out, err, wants_colour(colour, STDOUT_FILENO), wants_colour(colour, STDERR_FILENO)};
+    const Streams streams{out, err, wants_colour(colour, STDOUT_FILENO), wants_colour(colour, STDERR_FILENO),
+                          isatty(STDERR_FILENO) != 0};
     return guarded(
         [&]() -> int {
             if (weigh_app->parsed()) {

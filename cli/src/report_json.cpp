@@ -1,4 +1,5 @@
 // SPDX-License-Identifier: Apache-2.0
+#include "sensitivity_json.hpp"
 #include "steelyard/cli/numbers.hpp"
 #include "steelyard/cli/report.hpp"
 #include "steelyard/engine/log_weight.hpp"
@@ -107,18 +108,27 @@ Json ledger_entry_json(const Weighing& weighing, const likelihoods::TableSet& ta
 
 }  // namespace
 
-nlohmann::ordered_json report_json(const Weighing& weighing, const likelihoods::TableSet& tables,
-                                   const Provenance& provenance) {
+nlohmann::ordered_json report_json(const Weighing& weighing, const Sensitivity* sensitivity,
+                                   const likelihoods::TableSet& tables, const Provenance& provenance) {
     Json report = {{"format", "steelyard.report/1"}, {"case", weighing.panel.case_id}};
     report["urgent"] = urgent_json(weighing, tables);
     report["gate"] = gate_json(weighing);
     report["causes"] = causes_json(weighing);
+    if (sensitivity != nullptr) {
+        add_intervals(*sensitivity, report["causes"]);
+    }
     report["left_out"] = Json::array();
     for (const LeftOut& cause : weighing.left_out) {
         report["left_out"].push_back({{"id", cause.id}, {"title", cause.title}, {"why", cause.why}});
     }
-    report["summary"] = {{"separation", separation_sentence(weighing)},
+    report["summary"] = {{"separation", separation_sentence(weighing, sensitivity)},
                          {"grounds", grounds_sentence(weighing)}};
+    if (sensitivity != nullptr) {
+        if (const std::string fit = fit_sentence(weighing, sensitivity->fit); !fit.empty()) {
+            report["summary"]["fit"] = fit;
+        }
+        report["summary"]["cheapest_change"] = cheapest_change_sentence(*sensitivity, tables);
+    }
     report["ledger"] = Json::array();
     for (const LedgerEntry& entry : weighing.ledger) {
         report["ledger"].push_back(ledger_entry_json(weighing, tables, entry));
@@ -136,6 +146,12 @@ nlohmann::ordered_json report_json(const Weighing& weighing, const likelihoods::
         }
     }
     report["unread"] = weighing.unread;
+    if (sensitivity != nullptr) {
+        report["sensitivity"] = sensitivity_json(weighing, *sensitivity);
+        report["fit"] = fit_json(weighing, sensitivity->fit);
+        report["next"] = next_json(weighing, tables, *sensitivity);
+        report["next_pair"] = next_pair_json(*sensitivity);
+    }
     report["provenance"] = {{"version", provenance.version},
                             {"tables",
                              {{"title", provenance.tables_title},
@@ -145,6 +161,10 @@ nlohmann::ordered_json report_json(const Weighing& weighing, const likelihoods::
                              {{"title", provenance.priors_title},
                               {"name", provenance.priors_name},
                               {"digest", provenance.priors_digest}}}};
+    if (sensitivity != nullptr) {
+        report["provenance"]["seed"] = sensitivity->seed;
+        report["provenance"]["draws"] = sensitivity->spread.draws;
+    }
     report["caution"] =
         tables.caution.empty() ? std::string(caution_text) : std::string(caution_text) + " " + tables.caution;
     return report;

@@ -2,8 +2,11 @@
 // Sentences shared by the text and JSON reports.
 #include <fmt/format.h>
 
+#include <algorithm>
 #include <cmath>
+#include <optional>
 
+#include "sensitivity_parts.hpp"
 #include "steelyard/cli/numbers.hpp"
 #include "steelyard/cli/report.hpp"
 #include "steelyard/cli/terminal.hpp"
@@ -28,19 +31,28 @@ std::size_t findings_read(const Weighing& weighing) {
     return count;
 }
 
-/// How far apart two causes are, in words. The limits are judgement: 3, 10 and 100 to 1 (docs/method.md,
-/// "Words").
-std::string_view separation_words(double odds) {
-    if (odds < 3.0) {
+/// How far apart two causes are, in words: by their odds, and no further than the draws of tables and priors
+/// agree on the leader. The limits are judgement (docs/method.md, "Words").
+std::string_view separation_words(double odds, double leads) {
+    if (odds < 3.0 || leads < 0.8) {
         return "they are not separated by what is known here";
     }
-    if (odds < 10.0) {
+    if (odds < 10.0 || leads < 0.95) {
         return "they are only weakly separated";
     }
-    if (odds < 100.0) {
+    if (odds < 100.0 || leads < 0.99) {
         return "they are separated, if the tables and priors hold";
     }
     return "they are far apart, if the tables and priors hold";
+}
+
+/// Odds no finer than they are known: `about 6 to 1`, `over 100 to 1`.
+std::string rough_odds(double odds) {
+    if (odds >= 100.0) {
+        return "over 100 to 1";
+    }
+    const double step = odds < 10.0 ? 1.0 : 10.0;
+    return fmt::format("about {:.0f} to 1", std::max(1.0, std::round(odds / step) * step));
 }
 
 }  // namespace
@@ -85,20 +97,39 @@ std::string citation(const document::Source& source) {
     return text;
 }
 
-std::string separation_sentence(const Weighing& weighing) {
+std::string separation_sentence(const Weighing& weighing, const Sensitivity* sensitivity) {
     if (!weighing.weighed) {
         return "No cause was weighed.";
     }
     if (findings_read(weighing) == 0) {
         return "No finding of this case could be read: these are the prior odds alone.";
     }
-    const WeighedCause& leader = weighing.causes[weighing.ranking[0]];
+    const std::size_t first = weighing.ranking[0];
+    const WeighedCause& leader = weighing.causes[first];
     const WeighedCause& next = weighing.causes[weighing.ranking[1]];
     const double odds = std::exp(weighing.total_nats);
+    std::string lead;
+    std::string more;
+    double leads = 1.0;
+    if (sensitivity != nullptr) {
+        const Eigen::ArrayXd& all = sensitivity->spread.leads;
+        leads = all(static_cast<Eigen::Index>(first));
+        lead = fmt::format(" and leads in {} of the draws of tables and priors", percent(leads));
+        Eigen::Index most = 0;
+        if (all.maxCoeff(&most) > leads) {
+            more =
+                fmt::format(" \"{}\" leads in more of them ({}).",
+                            short_title(weighing.causes[static_cast<std::size_t>(most)]), percent(all(most)));
+        }
+    }
     return fmt::format(
-        "Of the causes weighed, \"{}\" carries the most probability; its odds against the next, \"{}\", are "
-        "{}: {}.",
-        leader.title, next.title, odds_in_words(odds), separation_words(odds));
+        R"("{}" carries the most probability of the causes weighed{}; its odds against "{}" are {}: {}.{})",
+        short_title(leader), lead, short_title(next), rough_odds(odds), separation_words(odds, leads), more);
+}
+
+std::string short_title(const WeighedCause& cause) {
+    const std::size_t bracket = cause.title.find(" (");
+    return bracket == std::string::npos ? cause.title : cause.title.substr(0, bracket);
 }
 
 std::string grounds_sentence(const Weighing& weighing) {
@@ -127,6 +158,60 @@ std::string grounds_sentence(const Weighing& weighing) {
         sentence += " Take the percentages as a ranking, not as measured chances.";
     }
     return sentence;
+}
+
+std::string cheapest_change_sentence(const Sensitivity& sensitivity, const likelihoods::TableSet& tables) {
+    constexpr double worth_telling = 0.01;
+    // The lightest burden first, and within it the likeliest to change the leader. To repeat a value costs
+    // what it cost.
+    struct Candidate {
+        std::ptrdiff_t burden;
+        double chance;
+        std::string words;
+    };
+    std::optional<Candidate> best;
+    const auto consider = [&](const std::string& what, const std::string& finding, double chance) {
+        const std::string& burden = tables.find_table(finding)->burden;
+        const Candidate candidate{std::find(burdens().begin(), burdens().end(), burden) - burdens().begin(),
+                                  chance,
+                                  fmt::format("{} \"{}\" ({})", what, tables.title_of(finding), burden)};
+        const bool better = !best || candidate.burden < best->burden ||
+                            (candidate.burden == best->burden && candidate.chance > best->chance);
+        if (chance >= worth_telling && better) {
+            best = candidate;
+        }
+    };
+    for (const auto* list : {&sensitivity.next, &sensitivity.beyond_burden}) {
+        for (const NextTest& test : *list) {
+            if (test.bits >
+                0.0) {  // one that only takes the place of known evidence is not expected to tell anything
+                consider("to look at", test.finding, test.leader_changes);
+            }
+        }
+    }
+    for (const ValueEdge& edge : sensitivity.edges) {
+        consider("to repeat", edge.finding, edge.chance_other.value_or(0.0));
+    }
+    if (!best) {
+        return "No finding not yet known and no repeated value has a chance of 1 % or more of putting "
+               "another cause "
+               "first.";
+    }
+    return fmt::format("The cheapest thing that could put another cause first is {}: chance {}.", best->words,
+                       percent(best->chance));
+}
+
+std::string fit_sentence(const Weighing& weighing, const Fit& fit) {
+    const std::size_t leader = weighing.ranking[0];
+    if (!fit.explained || fit.surprise[leader] >= unexplained_below) {
+        return {};
+    }
+    const auto best = static_cast<std::size_t>(std::max_element(fit.surprise.begin(), fit.surprise.end()) -
+                                               fit.surprise.begin());
+    return fmt::format(
+        R"(Under "{}" findings as unusual as these have a chance below 1 %; they go better with "{}" ({}).)",
+        short_title(weighing.causes[leader]), short_title(weighing.causes[best]),
+        percent(fit.surprise[best]));
 }
 
 }  // namespace steelyard::cli

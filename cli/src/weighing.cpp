@@ -118,7 +118,8 @@ Weighing weigh_case(const likelihoods::TableSet& tables, const priors::PriorSet&
     result.weighed_anyway = out_of_scope && options.weigh_anyway;
 
     std::vector<WeighedCause> causes = causes_to_weigh(tables, priors, options, result.left_out);
-    const likelihoods::Pattern pattern = likelihoods::read_pattern(tables, panel, result.quantities);
+    result.pattern = likelihoods::read_pattern(tables, panel, result.quantities);
+    const likelihoods::Pattern& pattern = result.pattern;
     result.unread = pattern.unread;
     if (result.weighed) {
         result.causes = std::move(causes);

@@ -83,7 +83,10 @@ class Writer {
         }
         dependence();
         limits();
-        sources("Sources of the limits and groups", set_.sources);
+        variation();
+        sources(set_.variation.quantities.empty() ? "Sources of the limits and groups"
+                                                  : "Sources of the limits, groups and variation",
+                set_.sources);
         while (out_.size() >= 2 && out_.ends_with("\n\n")) {
             out_.pop_back();
         }
@@ -299,6 +302,38 @@ class Writer {
             line("| {} | {} | {} | {} |", escaped(set_.title_of(limit.quantity)),
                  limit.low ? detail::shown(*limit.low) + unit : "",
                  limit.high ? detail::shown(*limit.high) + unit : "", grounds_text(limit.grounds));
+        }
+        blank();
+    }
+
+    void variation_figure(std::string_view title, std::string_view part, std::string_view method,
+                          const std::optional<VariationFigure>& figure) {
+        if (figure) {
+            line("| {} | {}{} | {}{} | {} | {} |", escaped(title), part,
+                 method.empty() ? std::string() : fmt::format(", by {}", escaped(method)),
+                 figure->relative ? "" : "SD ", escaped(figure->as_given), grounds_text(figure->grounds),
+                 escaped(figure->note));
+        }
+    }
+
+    void variation() {
+        const VariationSettings& stated = set_.variation;
+        if (stated.quantities.empty()) {
+            return;
+        }
+        line("### Variation of one reading");
+        blank();
+        line("| quantity | part | figure | basis and sources | note |");
+        line("| --- | --- | ---: | --- | --- |");
+        variation_figure("All concentrations of one urine", "dilution, in common", {}, stated.urine_dilution);
+        for (const Variation& entry : stated.quantities) {
+            const std::string title = set_.title_of(entry.quantity);
+            variation_figure(title, "analytical", {}, entry.parts.analytical);
+            variation_figure(title, "within-subject", {}, entry.parts.within);
+            for (const MethodVariation& other : entry.methods) {
+                variation_figure(title, "analytical", other.method, other.parts.analytical);
+                variation_figure(title, "within-subject", other.method, other.parts.within);
+            }
         }
         blank();
     }

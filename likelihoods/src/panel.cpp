@@ -383,12 +383,11 @@ void PanelBuilder::set_word(std::string_view flat_name, std::string_view text, s
     };
     if (is_meta) {
         static const std::vector<std::string> sexes{"female", "male", "unknown"};
-        static const std::vector<std::string> methods{"electrode", "dipstick"};
         if (flat_name == "final_cause") {
             panel_.final_cause = std::string(text);
         } else if (flat_name == "sex" && choose(sexes, Code::bad_choice)) {
             panel_.sex = text == "female" ? Sex::female : text == "male" ? Sex::male : Sex::unknown;
-        } else if (flat_name == "urine_method" && choose(methods, Code::bad_choice)) {
+        } else if (flat_name == "urine_method" && choose(methods_of("urine_ph"), Code::bad_choice)) {
             panel_.urine_ph_method = std::string(text);
         }
         return;
@@ -396,6 +395,16 @@ void PanelBuilder::set_word(std::string_view flat_name, std::string_view text, s
     if (choose(feature->second, Code::bad_level)) {
         panel_.observed.insert_or_assign(std::string(flat_name), Observation{std::string(text), where});
     }
+}
+
+std::span<const std::string> methods_of(std::string_view quantity) {
+    static const std::vector<std::string> of_urine_ph{"electrode", "dipstick"};
+    return quantity == "urine_ph" ? std::span<const std::string>(of_urine_ph)
+                                  : std::span<const std::string>();
+}
+
+std::string_view method_of(const Panel& panel, std::string_view quantity) {
+    return quantity == "urine_ph" ? std::string_view(panel.urine_ph_method) : std::string_view();
 }
 
 void PanelBuilder::unknown_name(std::string_view flat_name, std::string_view text,

@@ -8,9 +8,9 @@
 #include <cmath>
 #include <set>
 
+#include "arrange.hpp"
 #include "band_edges.hpp"
 #include "check_condition.hpp"
-#include "steelyard/engine/ledger.hpp"
 #include "wording.hpp"
 
 namespace steelyard::likelihoods {
@@ -38,8 +38,7 @@ class PatternReader {
         for (std::size_t i = 0; i < set_.tables.size(); ++i) {
             pattern_.findings.push_back(read(i));
         }
-        prefer();
-        weigh_groups();
+        detail::arrange(set_, pattern_.findings);
         list_unread();
         return std::move(pattern_);
     }
@@ -64,7 +63,7 @@ class PatternReader {
             detail::check_conditions(set_, table.usable_when, panel_, quantities_);
         if (reading.use == Use::missing) {
             // Asking for it would be in vain as long as the case stands as it does.
-            reading.barred = applicability.fails ? applicability.why_not : "";
+            reading.barred = applicability.usable ? "" : applicability.why_not;
             return reading;
         }
         if (!applicability.usable) {
@@ -231,64 +230,6 @@ class PatternReader {
         }
     }
 
-    FindingReading* find(std::string_view finding) {
-        const auto found = std::find_if(
-            pattern_.findings.begin(), pattern_.findings.end(),
-            [&](const FindingReading& reading) { return set_.tables[reading.table].finding == finding; });
-        return found == pattern_.findings.end() ? nullptr : &*found;
-    }
-
-    /// Of each list of alternatives only the first that can be read is read; the others are set aside, or
-    /// barred when they are missing. A missing one that is preferred to what is read is not barred: it would
-    /// be read.
-    void prefer() {
-        for (const OneOf& list : set_.one_of) {
-            std::vector<FindingReading*> members;
-            for (const std::string& finding : list.findings) {
-                if (FindingReading* reading = find(finding)) {
-                    members.push_back(reading);
-                }
-            }
-            const auto first = std::find_if(members.begin(), members.end(), [](const FindingReading* member) {
-                return member->use == Use::read;
-            });
-            if (first == members.end()) {
-                continue;
-            }
-            const std::string reason =
-                fmt::format("the {} is read in its place", in_sentence(set_.tables[(*first)->table].title));
-            for (auto later = first + 1; later != members.end(); ++later) {
-                FindingReading* member = *later;
-                if (member->use == Use::read) {
-                    member->use = Use::set_aside;
-                    member->why_not = reason;
-                } else if (member->use == Use::missing && member->barred.empty()) {
-                    member->barred = reason;
-                }
-            }
-        }
-    }
-
-    void weigh_groups() {
-        for (const Group& group : set_.groups) {
-            std::vector<FindingReading*> members;
-            for (const std::string& finding : group.findings) {
-                FindingReading* reading = find(finding);
-                if (reading != nullptr && reading->use == Use::read) {
-                    members.push_back(reading);
-                }
-            }
-            if (members.empty()) {
-                continue;
-            }
-            const double weight = engine::dependence_weight(static_cast<int>(members.size()), group.rho);
-            for (FindingReading* member : members) {
-                member->weight = weight;
-                member->group = weight < 1.0 ? group.name : "";
-            }
-        }
-    }
-
     /// Marks a quantity or feature as looked at, with what it was computed from.
     void mark(std::set<std::string, std::less<>>& looked_at, std::string_view id) const {
         looked_at.emplace(id);
@@ -336,6 +277,27 @@ class PatternReader {
 
 Pattern read_pattern(const TableSet& set, const Panel& panel, const Quantities& quantities) {
     return PatternReader(set, panel, quantities).run();
+}
+
+Pattern reread(const TableSet& set, const Pattern& pattern, const std::vector<ReadingChange>& changes) {
+    Pattern changed = pattern;
+    detail::take_apart(changed.findings);
+    for (const ReadingChange& change : changes) {
+        FindingReading& reading = changed.findings.at(change.table);
+        const EvidenceTable& table = set.tables.at(change.table);
+        FindingReading other;
+        other.table = change.table;
+        if (change.cell) {
+            other.use = Use::read;
+            other.cells = {*change.cell};
+            other.band = table.band_names.at(static_cast<std::size_t>(*change.cell));
+        } else {
+            other.why_not = "not given";
+        }
+        reading = std::move(other);
+    }
+    detail::arrange(set, changed.findings);
+    return changed;
 }
 
 Eigen::ArrayXXd log_likelihood_rows(const TableSet& set, const Pattern& pattern,

@@ -287,6 +287,9 @@ void finish_set_file(SetFile& file, const std::vector<std::string>& finding_ids,
     if (const Node* urgent = map.optional("urgent")) {
         read_urgent(*urgent, set, faults);
     }
+    if (const Node* variation = map.optional("variation")) {
+        read_variation(*variation, set, faults);
+    }
     check_sources_used(*file.root, set.sources, faults);
     map.finish();
 }

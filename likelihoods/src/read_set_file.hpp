@@ -1,7 +1,8 @@
 // SPDX-License-Identifier: Apache-2.0
 #pragma once
 // Reads set.yaml in two steps: what the evidence tables need first (causes, findings, features), and after
-// the tables what needs them (composites' rows, groups, alternatives, gate, urgent limits).
+// the tables what needs them (composites' rows, groups, alternatives, gate, urgent limits,
+// variation).
 
 #include <memory>
 #include <string>
@@ -38,5 +39,8 @@ void read_gate(const document::Node& node, TableSet& set, document::Diagnostics&
 
 /// The part of the second step that reads `urgent`.
 void read_urgent(const document::Node& node, TableSet& set, document::Diagnostics& faults);
+
+/// The part of the second step that reads `variation`.
+void read_variation(const document::Node& node, TableSet& set, document::Diagnostics& faults);
 
 }  // namespace steelyard::likelihoods::detail

@@ -20,7 +20,7 @@ def validator(path):
 
 
 def reports(program, cases, *options):
-    done = subprocess.run([program, "weigh", "--as", "json", *options, *map(str, cases)], capture_output=True, text=True)
+    done = subprocess.run([program, "weigh", "--as", "json", "--draws", "1000", *options, *map(str, cases)], capture_output=True, text=True)
     if done.returncode not in (0, 4):
         sys.exit(f"weigh failed: {done.stderr}")
     return json.loads(done.stdout)
@@ -32,7 +32,8 @@ def main():
     cases = sorted((source / "docs/cases").glob("*.yaml"))
     checked = 0
     faults = []
-    for options in ([], ["--weigh-anyway"], ["--priors", "renal-clinic-overlap"], ["--priors", "renal-causes"]):
+    for options in ([], ["--weigh-anyway"], ["--priors", "renal-clinic-overlap"], ["--priors", "renal-causes"],
+                    ["--until", "0.97", "--epsilon", "0.1", "--burden", "bedside"]):
         for report in reports(program, cases, *options):
             for error in report_schema.iter_errors(report):
                 faults.append(f"{report['case']} {options}: {error.json_path}: {error.message}")
@@ -47,6 +48,9 @@ def main():
         "another format": lambda r: r.__setitem__("format", "steelyard.report/2"),
         "a finding neither used nor explained": lambda r: r["ledger"][0].__setitem__("used", "yes"),
         "one cause only": lambda r: r.__setitem__("causes", r["causes"][:1]),
+        "a chance above 1": lambda r: r["next"][0]["after"][0].__setitem__("probability", 1.5),
+        "an unknown key of the fit": lambda r: r["fit"].__setitem__("verdict", "good"),
+        "a negative number of bits": lambda r: r["next"][0].__setitem__("bits", -0.1),
         "no digest": lambda r: r["provenance"]["tables"].pop("digest"),
     }
     for name, spoil in spoiled.items():

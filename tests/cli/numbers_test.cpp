@@ -66,5 +66,24 @@ TEST(OddsInWords, KeepsTheLargerSideToTwoDigits) {
     EXPECT_EQ(odds_in_words(2.5e9), "over a million to 1");
 }
 
+TEST(SupportedStep, GrowsWithTheInterval) {
+    EXPECT_EQ(supported_step(0.90, 0.95), 1);
+    EXPECT_EQ(supported_step(0.90, 0.96), 5);
+    EXPECT_EQ(supported_step(0.60, 0.89), 5);
+    EXPECT_EQ(supported_step(0.10, 0.90), 10);
+}
+
+TEST(PercentInSteps, NeverSaysNothingOrAll) {
+    EXPECT_EQ(percent_in_steps(0.844, 10), "80 %");
+    EXPECT_EQ(percent_in_steps(0.844, 5), "85 %");
+    EXPECT_EQ(percent_in_steps(0.844, 1), "84 %");
+    EXPECT_EQ(percent_in_steps(0.02, 5), "<5 %");
+    EXPECT_EQ(percent_in_steps(0.04, 10), "<10 %");
+    EXPECT_EQ(percent_in_steps(0.999, 5), ">95 %");
+    EXPECT_EQ(percent_in_steps(0.999, 1), ">99 %");
+    EXPECT_EQ(percent_in_steps(0.0, 1), "<1 %");
+    EXPECT_EQ(percent_in_steps(1.0, 10), ">90 %");
+}
+
 }  // namespace
 }  // namespace steelyard::cli

@@ -222,8 +222,10 @@ TEST(Pattern, AMissingFindingWhoseConditionFailsIsBarred) {
     EXPECT_EQ(read_small(fasting).of("serum_calcium").barred, "");
     EXPECT_EQ(read_small({{"serum_albumin", "<30 g/L"}}).of("serum_calcium").barred, "")
         << "a limit that leaves the condition open does not fail it";
-    EXPECT_EQ(read_small(Entries{}).of("serum_phosphate").barred, "")
-        << "nor does a condition of which nothing is known, though it would set aside";
+    EXPECT_NE(
+        read_small(Entries{}).of("serum_phosphate").barred.find("cannot be told whether it may be read"),
+        std::string::npos)
+        << "one of which nothing is known bars when it would set the finding aside";
     EXPECT_EQ(
         read_small({{"serum_albumin", "20 g/L"}, {"serum_calcium", "2.3 mmol/L"}}).of("serum_calcium").barred,
         "")
@@ -236,7 +238,7 @@ TEST(Pattern, AMissingAlternativeOfOneThatIsReadIsBarred) {
     EXPECT_EQ(read.of("serum_urate").why_not, "not given");
     EXPECT_EQ(read.of("serum_urate").barred, "the serum phosphate is read in its place");
     EXPECT_EQ(read.of("serum_phosphate").barred, "");
-    const Read second = read_small({{"serum_urate", "300 umol/L"}});
+    const Read second = read_small({{"serum_urate", "300 umol/L"}, {"gfr", "90 mL/min/{1.73_m2}"}});
     EXPECT_EQ(second.of("serum_phosphate").barred, "") << "it is preferred, so it would be read";
     const Read own = read_small({{"serum_urate", "300 umol/L"}, {"gfr", "20 mL/min/{1.73_m2}"}});
     EXPECT_EQ(own.of("serum_phosphate").barred, "filtration is too low (GFR 20 mL/min/1.73 m²)")
@@ -396,6 +398,71 @@ TEST(Pattern, EveryValueFallsInExactlyOneBand) {
         RC_ASSERT((band == 0 || value >= edges[band - 1] - hair));
         RC_ASSERT((band == edges.size() || value < edges[band] + hair));
     }));
+}
+
+/// Index of a finding's table.
+std::size_t table_of(const TableSet& set, const std::string& finding) {
+    return static_cast<std::size_t>(set.find_table(finding) - set.tables.data());
+}
+
+bool same_reading(const FindingReading& a, const FindingReading& b) {
+    return a.table == b.table && a.use == b.use && a.cells == b.cells && a.band == b.band &&
+           a.why_not == b.why_not && a.barred == b.barred && a.weight == b.weight && a.group == b.group &&
+           a.passed_over == b.passed_over;
+}
+
+const Entries all_of_it = with(fasting, {{"gfr", "90 mL/min/{1.73_m2}"},
+                                         {"serum_calcium", "2.3 mmol/L"},
+                                         {"serum_phosphate", "1.0 mmol/L"},
+                                         {"serum_urate", "300 umol/L"},
+                                         {"tremor", "present"},
+                                         {"serum_magnesium", "0.8 mmol/L"}});
+
+TEST(Reread, WithoutChangesIsThePatternItself) {
+    for (const Entries& entries : {Entries{}, fasting, all_of_it}) {
+        const Read read = read_small(entries);
+        const Pattern again = likelihoods::reread(read.set, read.pattern, {});
+        for (std::size_t i = 0; i < again.findings.size(); ++i) {
+            EXPECT_TRUE(same_reading(again.findings[i], read.pattern.findings[i])) << i;
+        }
+    }
+}
+
+TEST(Reread, WithoutAPreferredFindingItsAlternativeIsRead) {
+    const Read read = read_small(all_of_it);
+    ASSERT_EQ(read.of("serum_phosphate").use, Use::read);
+    ASSERT_TRUE(read.of("serum_urate").passed_over);
+    const std::size_t phosphate = table_of(read.set, "serum_phosphate");
+    const std::size_t urate = table_of(read.set, "serum_urate");
+    const Pattern without = likelihoods::reread(read.set, read.pattern, {{phosphate, {}}});
+    EXPECT_EQ(without.findings[phosphate].use, Use::missing);
+    EXPECT_EQ(without.findings[urate].use, Use::read);
+    EXPECT_EQ(without.findings[urate].band, read.of("serum_urate").band);
+    // And the other way about: the preferred one comes back and the alternative is passed over again.
+    const Pattern back =
+        likelihoods::reread(read.set, without, {{phosphate, read.of("serum_phosphate").cells.front()}});
+    EXPECT_EQ(back.findings[urate].use, Use::set_aside);
+    EXPECT_TRUE(back.findings[urate].passed_over);
+}
+
+TEST(Reread, AGroupIsWeighedAnew) {
+    const Read read = read_small(all_of_it);
+    const std::size_t calcium = table_of(read.set, "serum_calcium");
+    const std::size_t other = table_of(read.set, "tremor_and_magnesium");
+    ASSERT_LT(read.pattern.findings[calcium].weight, 1.0);
+    const Pattern without = likelihoods::reread(read.set, read.pattern, {{other, {}}});
+    EXPECT_EQ(without.findings[calcium].weight, 1.0);
+    EXPECT_TRUE(without.findings[calcium].group.empty());
+    const Pattern with_again = likelihoods::reread(read.set, without, {{other, Eigen::Index{0}}});
+    EXPECT_EQ(with_again.findings[calcium].weight, read.pattern.findings[calcium].weight);
+}
+
+TEST(Reread, RefusesWhatIsNotOfTheSet) {
+    const Read read = read_small(fasting);
+    EXPECT_THROW(static_cast<void>(likelihoods::reread(read.set, read.pattern, {{99, {}}})),
+                 std::out_of_range);
+    EXPECT_THROW(static_cast<void>(likelihoods::reread(read.set, read.pattern, {{0, Eigen::Index{99}}})),
+                 std::out_of_range);
 }
 
 }  // namespace

@@ -181,7 +181,16 @@ spoil("table-set", load(shipped), [
     ("causes/proximal/title", gone, "causes/proximal"), ("causes/proximal/icd10cm", "acidosis", "causes/proximal/icd10cm"),
     ("causes/proximal/takes", {"gfr": "proximal"}, "causes/proximal"),
     ("groups/0/rho", 1.5, "groups/0/rho"), ("groups/0/findings", ["urine_ph"], "groups/0/findings"),
-    ("urgent/0/basis", gone, "urgent/0"), ("urgent/0", {"quantity": "serum_potassium", "basis": "practice"}, "urgent/0")])
+    ("urgent/0/basis", gone, "urgent/0"), ("urgent/0", {"quantity": "serum_potassium", "basis": "practice"}, "urgent/0"),
+    ("variation/urine_dilution/value", "20 mmol/L", "variation/urine_dilution/value"),
+    ("variation/urine_dilution/basis", gone, "variation/urine_dilution"),
+    ("variation/serum_sodium/within/basis", gone, "variation/serum_sodium/within"),
+    ("variation/serum_sodium/within/value", "much", "variation/serum_sodium/within/value"),
+    ("variation/serum_creatinine/within/source", gone, "variation/serum_creatinine/within"),
+    ("variation/serum_sodium/between", {"value": "1 %", "basis": "memory"}, "variation/serum_sodium"),
+    ("variation/serum_sodium", {}, "variation/serum_sodium"),
+    ("variation/urine_ph/methods/eye", {"within": {"value": 1, "basis": "elicited"}}, "variation/urine_ph/methods"),
+    ("variation/urine_ph/methods/dipstick", {}, "variation/urine_ph/methods/dipstick")])
 
 # Cases.
 case = {

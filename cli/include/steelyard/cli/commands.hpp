@@ -29,6 +29,7 @@ struct Streams {
     std::ostream& err;
     bool colour_out = false;
     bool colour_err = false;
+    bool terminal_err = false;  ///< progress may be shown
 };
 
 struct WeighCommand {
@@ -37,6 +38,11 @@ struct WeighCommand {
     std::string tables = "adult";
     std::vector<std::string> exclude;
     bool weigh_anyway = false;
+    bool brief = false;
+    bool full = false;
+    std::string burden = "specialised";
+    std::string until, epsilon, draws, threads;  ///< as typed; empty when not given
+    std::string seed = "1";
     std::string as = "text";
     std::string out;
 };

@@ -12,6 +12,14 @@ namespace steelyard::cli {
 /// `<1 %`, `37 %`, `>99 %`.
 std::string percent(double probability);
 
+/// The step, in percentage points, to which a posterior may be rounded so that it says no more than its
+/// interval supports: 1 when the interval is at most 5 points wide, 5 up to 30 points, 10 beyond. @param low,
+/// high  its 95 % interval
+int supported_step(double low, double high);
+
+/// A probability rounded to a step: `40 %`; `<5 %` and `>95 %` at the ends, never 0 or 100.
+std::string percent_in_steps(double probability, int step);
+
 /// The shortest decimal that reads back, cut to `digits` significant digits: `2.8`, `0.123`, `1030`.
 std::string plain(double value, int digits = 4);
 

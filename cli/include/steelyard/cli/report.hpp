@@ -5,7 +5,7 @@
 #include <nlohmann/json.hpp>
 #include <string>
 
-#include "steelyard/cli/weighing.hpp"
+#include "steelyard/cli/sensitivity.hpp"
 
 namespace steelyard::cli {
 
@@ -20,10 +20,19 @@ Provenance provenance_of(const likelihoods::TableSet& tables, const priors::Prio
 /// The caution that stands in every output.
 extern const char* const caution_text;
 
-std::string report_text(const Weighing& weighing, const likelihoods::TableSet& tables,
-                        const Provenance& provenance, bool colour);
-nlohmann::ordered_json report_json(const Weighing& weighing, const likelihoods::TableSet& tables,
-                                   const Provenance& provenance);
+/// How much of a report is written as text.
+enum class Length {
+    brief,     ///< one screen: what is urgent, how likely each cause is, what to look at next
+    ordinary,  ///< two screens: what it rests on and what would overturn it besides
+    full       ///< everything, with every figure's basis and source
+};
+
+/// @param sensitivity  of a weighed case; null leaves out what it says
+std::string report_text(const Weighing& weighing, const Sensitivity* sensitivity,
+                        const likelihoods::TableSet& tables, const Provenance& provenance, Length length,
+                        bool colour);
+nlohmann::ordered_json report_json(const Weighing& weighing, const Sensitivity* sensitivity,
+                                   const likelihoods::TableSet& tables, const Provenance& provenance);
 
 /// JSON as text. File names need not be UTF-8; bytes that are not become U+FFFD.
 std::string dumped(const nlohmann::ordered_json& json, int indent = -1);
@@ -34,8 +43,17 @@ std::string grounds_in_words(const document::Grounds& grounds);
 /// `key: citation. doi .... Read: abstract.`, made harmless for a terminal.
 std::string citation(const document::Source& source);
 
-/// What the answer amounts to in one or two plain sentences, never worded as a diagnosis.
-std::string separation_sentence(const Weighing& weighing);
+/// A cause's title without the bracket that says the same in the field's numbers.
+std::string short_title(const WeighedCause& cause);
+
+/// Whether the leader is separated from the next cause, in one plain sentence, never worded as a diagnosis.
+std::string separation_sentence(const Weighing& weighing, const Sensitivity* sensitivity);
+/// What carries the answer: how much of the weight rests on published figures, how much on judgement. May be
+/// empty.
 std::string grounds_sentence(const Weighing& weighing);
+/// The cheapest thing that could change the answer: a finding not yet known, or a value repeated.
+std::string cheapest_change_sentence(const Sensitivity& sensitivity, const likelihoods::TableSet& tables);
+/// That the leader does not fit what another cause does; empty otherwise.
+std::string fit_sentence(const Weighing& weighing, const Fit& fit);
 
 }  // namespace steelyard::cli

@@ -52,6 +52,7 @@ struct WeightByBasis {
 struct Weighing {
     likelihoods::Panel panel;
     likelihoods::Quantities quantities;
+    likelihoods::Pattern pattern;
     std::vector<likelihoods::UrgentValue> urgent;
     likelihoods::GateResult gate;
     bool weighed = false;              ///< false: out of scope, and not weighed anyway

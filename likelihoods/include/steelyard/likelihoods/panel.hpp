@@ -5,6 +5,7 @@
 
 #include <map>
 #include <optional>
+#include <span>
 #include <string>
 #include <string_view>
 #include <utility>
@@ -54,6 +55,12 @@ struct Panel {
     std::string urine_ph_method;                               ///< `electrode`, `dipstick` or empty
     std::optional<std::string> final_cause;                    ///< only in audits
 };
+
+/// The methods of measurement that a case may state for a quantity (`electrode` and `dipstick` for the urine
+/// pH); empty where it may state none.
+std::span<const std::string> methods_of(std::string_view quantity);
+/// The method that this case states for a quantity; empty when it states none.
+std::string_view method_of(const Panel& panel, std::string_view quantity);
 
 /// The features a case may mention, and the levels of each: from a table set.
 struct FeatureVocabulary {

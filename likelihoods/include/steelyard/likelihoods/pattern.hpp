@@ -29,9 +29,10 @@ struct FindingReading {
     std::vector<std::string>
         remarks;  ///< what a reader should know: a dipstick near an edge, a computed input
     std::vector<std::string>
-        unchecked;        ///< subjects of conditions that could not be checked: nothing is known of them
-    double weight = 1.0;  ///< dependence factor d of its group
-    std::string group;    ///< name of its group when it weighs less than 1
+        unchecked;             ///< subjects of conditions that could not be checked: nothing is known of them
+    double weight = 1.0;       ///< dependence factor d of its group
+    std::string group;         ///< name of its group when it weighs less than 1
+    bool passed_over = false;  ///< it, or a value of it, would be read but for a preferred alternative
 };
 
 /// Values of the case that nothing in this set reads.
@@ -42,6 +43,17 @@ struct Pattern {
 };
 
 Pattern read_pattern(const TableSet& set, const Panel& panel, const Quantities& quantities);
+
+/// What another case would be like in which one finding is known otherwise.
+struct ReadingChange {
+    std::size_t table = 0;             ///< index into TableSet::tables
+    std::optional<Eigen::Index> cell;  ///< the band read; empty: the finding is not known
+};
+
+/// The pattern with some findings known otherwise, all else as it is: preference among alternatives and the
+/// weights of groups are settled anew. Conditions of use are not checked again.
+/// @throws std::out_of_range  a table or cell that is not of the set
+Pattern reread(const TableSet& set, const Pattern& pattern, const std::vector<ReadingChange>& changes);
 
 /// ln P(what was seen | cause) for the findings read: shape (read findings, causes), rows in the order of the
 /// set.

@@ -1,7 +1,7 @@
 // SPDX-License-Identifier: Apache-2.0
 #pragma once
-// A table set: causes, evidence tables, groups, alternatives, features, gate and urgent limits. A value of
-// this type is whole and coherent; read_table_set.hpp makes one from files.
+// A table set: causes, evidence tables, groups, alternatives, features, gate, urgent limits and
+// variation. A value of this type is whole and coherent; read_table_set.hpp makes one from files.
 
 #include <Eigen/Core>
 #include <map>
@@ -15,6 +15,7 @@
 #include "steelyard/engine/row_forms.hpp"
 #include "steelyard/likelihoods/gate.hpp"
 #include "steelyard/likelihoods/panel.hpp"
+#include "steelyard/likelihoods/variation.hpp"
 
 namespace steelyard::likelihoods {
 
@@ -134,6 +135,7 @@ struct TableSet {
     GateSettings gate;
     std::vector<GateEntry> gate_entries;  ///< in the order of the program's list of keys
     std::vector<UrgentLimit> urgent;
+    VariationSettings variation;
     document::Sources sources;
     std::string caution;
 

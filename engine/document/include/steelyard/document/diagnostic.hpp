@@ -79,6 +79,7 @@ enum class Code {
     bad_one_of,
     bad_composite,
     bad_gate,
+    bad_variation,
     missing_file
 };
 
