@@ -77,20 +77,6 @@ std::string unit_shown(std::string_view ucum) {
     return std::string(reading.unit->shown);
 }
 
-std::string odds_in_words(double odds) {
-    const auto side = [](double value) {
-        if (value >= 1e6) {
-            return std::string("over a million");
-        }
-        if (value >= 99.5) {
-            const double scale = std::pow(10.0, std::floor(std::log10(value)) - 1.0);
-            return fmt::format("{:.0f}", std::round(value / scale) * scale);
-        }
-        return fmt::format("{:.2g}", value);
-    };
-    return odds >= 1.0 ? side(odds) + " to 1" : "1 to " + side(1.0 / odds);
-}
-
 double decibans(double nats) {
     return engine::LogWeight::nats(nats).to_decibans();
 }

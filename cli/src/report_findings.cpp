@@ -84,7 +84,7 @@ class LedgerText {
                 ++at;
             }
         }
-        row(fmt::format("Posterior odds, {}", odds_in_words(std::exp(view_.weighing.total_nats))),
+        row(fmt::format("Posterior odds, {}", rough_odds(std::exp(view_.weighing.total_nats))),
             view_.posterior_shown(view_.weighing.ranking[0]),
             view_.posterior_shown(view_.weighing.ranking[1]), signed_fixed(total, 1), "");
     }

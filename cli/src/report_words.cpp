@@ -46,15 +46,6 @@ std::string_view separation_words(double odds, double leads) {
     return "they are far apart, if the tables and priors hold";
 }
 
-/// Odds no finer than they are known: `about 6 to 1`, `over 100 to 1`.
-std::string rough_odds(double odds) {
-    if (odds >= 100.0) {
-        return "over 100 to 1";
-    }
-    const double step = odds < 10.0 ? 1.0 : 10.0;
-    return fmt::format("about {:.0f} to 1", std::max(1.0, std::round(odds / step) * step));
-}
-
 }  // namespace
 
 Provenance provenance_of(const likelihoods::TableSet& tables, const priors::PriorSet& priors) {
@@ -95,6 +86,14 @@ std::string citation(const document::Source& source) {
         text += " Read: " + visible(source.seen) + ".";
     }
     return text;
+}
+
+std::string rough_odds(double odds) {
+    if (odds >= 100.0) {
+        return "over 100 to 1";
+    }
+    const double step = odds < 10.0 ? 1.0 : 10.0;
+    return fmt::format("about {:.0f} to 1", std::max(1.0, std::round(odds / step) * step));
 }
 
 std::string separation_sentence(const Weighing& weighing, const Sensitivity* sensitivity) {

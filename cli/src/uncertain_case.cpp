@@ -92,7 +92,7 @@ UncertainCase uncertain_case(const CaseModel& model, const priors::PriorSet& pri
         engine::UncertainPrior prior = uncertain_prior(priors, *priors.find(id));
         prior.stream =
             static_cast<std::uint32_t>(model.tables().find_cause(id) - model.tables().causes.data());
-        result.problem.priors.push_back(std::move(prior));
+        result.problem.priors.push_back(prior);
     }
     std::vector<double> weights;
     for (std::size_t i = 0; i < pattern.findings.size(); ++i) {

@@ -207,7 +207,7 @@ Surprise drawn_surprise(const std::vector<Eigen::ArrayXXd>& bands, const Eigen::
         }
         as_unusual += (drawn <= observed + tie).cast<double>();
     }
-    const double count = static_cast<double>(draws);
+    const auto count = static_cast<double>(draws);
     Surprise result;
     result.exact = false;
     result.probability = (observed > -infinity).select((1.0 + as_unusual) / (1.0 + count), 0.0);

@@ -157,7 +157,10 @@ double divergence_bits(const Eigen::Ref<const Eigen::ArrayXd>& p, const Eigen::R
     double sum = 0.0;
     for (Eigen::Index k = 0; k < p.size(); ++k) {
         if (p(k) > 0.0) {
-            sum += q(k) > 0.0 ? p(k) * (std::log(p(k)) - std::log(q(k))) : infinity;
+            if (!(q(k) > 0.0)) {
+                return infinity;  // q excludes what p allows
+            }
+            sum += p(k) * (std::log(p(k)) - std::log(q(k)));
         }
     }
     return bits_not_negative(sum);
@@ -298,7 +301,7 @@ FindingPair best_pair(const Eigen::Ref<const Eigen::ArrayXd>& now,
 TwoStepPlan two_step_plan(const Eigen::Ref<const Eigen::ArrayXd>& now,
                           const std::vector<Eigen::ArrayXXd>& findings, FindingIndex first) {
     check_findings("two_step_plan", now, findings);
-    const Eigen::Index count = static_cast<Eigen::Index>(findings.size());
+    const auto count = static_cast<Eigen::Index>(findings.size());
     check_index("two_step_plan", "first", first.value, count);
     const Eigen::ArrayXXd given_cause = entropies_given_cause(findings, now.size());
     const ExpectedInformation step =

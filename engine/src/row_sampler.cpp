@@ -43,17 +43,16 @@ const NormalTable& normal_table() {
 
 class DirichletSampler final : public RowSampler {
   public:
-    DirichletSampler(const DirichletLaw& law, const std::vector<Eigen::Index>& cells) {
+    DirichletSampler(const DirichletLaw& law, const std::vector<Eigen::Index>& cells)
+        : certain_(static_cast<Eigen::Index>(cells.size()) == law.alpha.size()) {
+        if (certain_) {
+            return;  // all cells seen: the share is 1 in every draw
+        }
         double seen = 0.0;
         for (const Eigen::Index cell : cells) {
             seen += law.alpha(cell);
         }
-        // All cells seen: the share is 1 in every draw.
-        const double rest = law.alpha.sum() - seen;
-        certain_ = static_cast<Eigen::Index>(cells.size()) == law.alpha.size();
-        if (!certain_) {
-            table_ = log_beta_quantiles(seen, rest);
-        }
+        table_ = log_beta_quantiles(seen, law.alpha.sum() - seen);
     }
 
     void fill(const Eigen::Ref<const Eigen::ArrayXXd>& uniforms,
@@ -69,7 +68,7 @@ class DirichletSampler final : public RowSampler {
     }
 
   private:
-    bool certain_ = false;
+    bool certain_;
     QuantileTable table_;
 };
 
@@ -77,8 +76,8 @@ class DirichletSampler final : public RowSampler {
 /// normal law.
 class SummarySampler final : public RowSampler {
   public:
-    SummarySampler(const SummaryLaw& law, const std::vector<Eigen::Index>& cells)
-        : cells_(cells),
+    SummarySampler(const SummaryLaw& law, std::vector<Eigen::Index> cells)
+        : cells_(std::move(cells)),
           relative_sd_(relative_sd_quantiles(law.n - 1.0)),
           root_n_(std::sqrt(law.n)),
           least_(law.least) {

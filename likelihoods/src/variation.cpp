@@ -214,8 +214,8 @@ class SpreadReader {
     std::optional<double> change(std::string_view quantity, const QuantityValue& known,
                                  const std::vector<Input>& inputs, const std::vector<double>& steps) const {
         constexpr int halvings = 10;
-        double part = 1.0;
-        for (int i = 0; i <= halvings; ++i, part /= 2.0) {
+        for (int i = 0; i <= halvings; ++i) {
+            const double part = std::ldexp(1.0, -i);
             std::vector<std::pair<std::string, double>> up, down;
             for (std::size_t k = 0; k < inputs.size(); ++k) {
                 up.emplace_back(inputs[k].id, inputs[k].value + part * steps[k]);
@@ -256,7 +256,7 @@ class SpreadReader {
             sd = std::hypot(sd, *part);
         }
         if (inputs.size() > 1) {
-            spread_.remarks.push_back(
+            spread_.remarks.emplace_back(
                 diluted.empty()
                     ? "the values it is computed from are taken to vary independently"
                     : "the values it is computed from are taken to vary independently but for the dilution "

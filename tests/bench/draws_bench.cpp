@@ -40,7 +40,7 @@ Eigen::ArrayXd alpha_of(Eigen::Index finding, Eigen::Index cause) {
 UncertainProblem problem(const Size& size, bool summaries) {
     const auto [causes, findings] = size;
     UncertainProblem result;
-    result.priors.resize(causes);
+    result.priors.resize(static_cast<std::size_t>(causes));
     result.row_of.resize(findings, causes);
     result.weight.setOnes(findings);
     for (Eigen::Index f = 0; f < findings; ++f) {

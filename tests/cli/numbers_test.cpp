@@ -6,6 +6,8 @@
 
 #include <cmath>
 
+#include "steelyard/cli/report.hpp"
+
 namespace steelyard::cli {
 namespace {
 
@@ -56,14 +58,13 @@ TEST(Decibans, AgreeWithTheTunnyReport) {
     EXPECT_NEAR(decibans(std::log(2.5)), 4.0, 0.03);
 }
 
-TEST(OddsInWords, KeepsTheLargerSideToTwoDigits) {
-    EXPECT_EQ(odds_in_words(3.0), "3 to 1");
-    EXPECT_EQ(odds_in_words(1.0 / 3.0), "1 to 3");
-    EXPECT_EQ(odds_in_words(99.4), "99 to 1");
-    EXPECT_EQ(odds_in_words(99.7), "100 to 1");
-    EXPECT_EQ(odds_in_words(100.0), "100 to 1");
-    EXPECT_EQ(odds_in_words(1234.0), "1200 to 1");
-    EXPECT_EQ(odds_in_words(2.5e9), "over a million to 1");
+TEST(RoughOdds, AreNoFinerThanTheyAreKnown) {
+    EXPECT_EQ(rough_odds(1.0), "about 1 to 1");
+    EXPECT_EQ(rough_odds(5.93), "about 6 to 1");
+    EXPECT_EQ(rough_odds(9.6), "about 10 to 1");
+    EXPECT_EQ(rough_odds(34.0), "about 30 to 1");
+    EXPECT_EQ(rough_odds(99.9), "about 100 to 1");
+    EXPECT_EQ(rough_odds(560.0), "over 100 to 1");
 }
 
 TEST(SupportedStep, GrowsWithTheInterval) {

@@ -64,7 +64,7 @@ std::string leader_of(const Json& report) {
 class LarkmoorCase : public ::testing::TestWithParam<std::string> {};
 
 TEST_P(LarkmoorCase, IsReadWithoutFaultAndReportedInEightyColumns) {
-    const Outcome outcome = run({"weigh", GetParam()});
+    const Outcome outcome = run({"weigh", GetParam(), "--draws", "1000"});
     EXPECT_TRUE(outcome.code == 0 || outcome.code == 4) << outcome.err;
     EXPECT_EQ(outcome.err.empty(), outcome.code == 0) << outcome.err;
     EXPECT_NE(outcome.out.find("Caution: "), std::string::npos);

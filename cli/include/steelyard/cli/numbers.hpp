@@ -32,9 +32,6 @@ std::string in_words(const likelihoods::Interval& interval, int digits = 6);
 /// A unit as shown to people: `mmHg`, `mL/min/1.73 m2`; empty for pH and plain ratios.
 std::string unit_shown(std::string_view ucum);
 
-/// `3 to 1` and the like for odds: at most two significant digits on the larger side.
-std::string odds_in_words(double odds);
-
 /// nats to decibans.
 double decibans(double nats);
 

@@ -46,6 +46,8 @@ std::string citation(const document::Source& source);
 /// A cause's title without the bracket that says the same in the field's numbers.
 std::string short_title(const WeighedCause& cause);
 
+/// Odds of at least 1, no finer than they are known: `about 6 to 1`, `over 100 to 1`.
+std::string rough_odds(double odds);
 /// Whether the leader is separated from the next cause, in one plain sentence, never worded as a diagnosis.
 std::string separation_sentence(const Weighing& weighing, const Sensitivity* sensitivity);
 /// What carries the answer: how much of the weight rests on published figures, how much on judgement. May be
