@@ -251,8 +251,8 @@ Sensitivity sensitivity_of(const TableSet& tables, const priors::PriorSet& prior
         result.contamination =
             cause_ranges(engine::range_of_contamination(model.log_prior(), *options.epsilon, log_likelihood));
     }
-    result.variance =
-        variance_by_source(model, uncertain, drawn, pattern, static_cast<Eigen::Index>(leader), options.seed);
+    result.variance = variance_by_source(model, uncertain, drawn, pattern, static_cast<Eigen::Index>(leader),
+                                         options.seed, options.threads);
     result.fit = fit_of(model, weighing, options.seed);
     find_next_tests(model, weighing, options.burden, result);
     return result;

@@ -29,7 +29,7 @@ Fit fit_of(const CaseModel& model, const Weighing& weighing, std::uint64_t seed)
 std::vector<VarianceSource> variance_by_source(const CaseModel& model, const UncertainCase& uncertain,
                                                const engine::UncertainPosterior& posterior,
                                                const likelihoods::Pattern& pattern, Eigen::Index leader,
-                                               std::uint64_t seed);
+                                               std::uint64_t seed, int threads);
 
 /// What each finding not yet known may be expected to tell: fills `next`, `pair` and `plan`.
 void find_next_tests(const CaseModel& model, const Weighing& weighing, const std::string& burden,

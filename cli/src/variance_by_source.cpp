@@ -3,6 +3,7 @@
 
 #include "sensitivity_parts.hpp"
 #include "steelyard/engine/counter_random.hpp"
+#include "steelyard/engine/parallel.hpp"
 #include "steelyard/engine/quasi_random.hpp"
 #include "steelyard/engine/variance_shares.hpp"
 
@@ -64,17 +65,17 @@ Eigen::ArrayXd leaders_posterior(const Eigen::ArrayXXd& scores, Eigen::Index lea
 std::vector<VarianceSource> variance_by_source(const CaseModel& model, const UncertainCase& uncertain,
                                                const engine::UncertainPosterior& posterior,
                                                const likelihoods::Pattern& pattern, Eigen::Index leader,
-                                               std::uint64_t seed) {
+                                               std::uint64_t seed, int threads) {
     const Eigen::Index sources = posterior.sources();
     Eigen::Index dimensions = 0;
     for (Eigen::Index s = 0; s < sources; ++s) {
         dimensions += posterior.coordinates(s);
     }
-    std::vector<engine::VarianceShares> shares;
+    std::vector<engine::VarianceShares> shares(replicates);
     const Points all_points(seed, 2 * dimensions);
-    for (int replicate = 0; replicate < replicates; ++replicate) {
+    engine::run_in_parallel(replicates, threads, [&](Eigen::Index replicate) {
         // Even columns make A, odd ones B, so that both get dimensions of equal quality.
-        const Eigen::ArrayXXd cube = all_points.of(replicate);
+        const Eigen::ArrayXXd cube = all_points.of(static_cast<int>(replicate));
         std::vector<Eigen::ArrayXXd> of_a;
         std::vector<Eigen::ArrayXXd> of_b;
         Eigen::ArrayXXd sum_a = Eigen::ArrayXXd::Zero(points, posterior.causes());
@@ -98,9 +99,9 @@ std::vector<VarianceSource> variance_by_source(const CaseModel& model, const Unc
             const auto i = static_cast<std::size_t>(s);
             mixed.col(s) = leaders_posterior(sum_a - of_a[i] + of_b[i], leader);
         }
-        shares.push_back(engine::variance_shares(leaders_posterior(sum_a, leader),
-                                                 leaders_posterior(sum_b, leader), mixed));
-    }
+        shares[static_cast<std::size_t>(replicate)] = engine::variance_shares(
+            leaders_posterior(sum_a, leader), leaders_posterior(sum_b, leader), mixed);
+    });
     const engine::ReplicatedShares mean = engine::replicated_shares(shares);
     std::vector<VarianceSource> list;
     if (!mean.varies) {

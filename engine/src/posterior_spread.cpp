@@ -8,8 +8,8 @@
 #include <vector>
 
 #include "guards.hpp"
-#include "parallel.hpp"
 #include "steelyard/engine/domain_error.hpp"
+#include "steelyard/engine/parallel.hpp"
 
 namespace steelyard::engine {
 namespace {

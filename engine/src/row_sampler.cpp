@@ -97,13 +97,19 @@ class SummarySampler final : public RowSampler {
               const Eigen::Ref<const Eigen::ArrayXd>& /*reference*/,
               Eigen::Ref<Eigen::ArrayXd> out) const override {
         const QuantileTable& normal = normal_quantiles();
-        const NormalTable& table = normal_table();
+        // (edge - mean) / sigma, with sigma = sd / ratio and mean = stated mean + sigma z / sqrt(n).
+        Eigen::ArrayXd ratio(out.size());
+        Eigen::ArrayXd shift(out.size());
         for (Eigen::Index i = 0; i < out.size(); ++i) {
-            // (edge - mean) / sigma, with sigma = sd / relative sd and mean = stated mean + sigma z /
-            // sqrt(n).
-            const double ratio = relative_sd_.at(uniforms(i, 0));
-            const double shift = normal.at(uniforms(i, 1)) / root_n_;
-            out(i) = least_ > 0.0 ? raised_share(table, ratio, shift) : share(table, ratio, shift);
+            ratio(i) = relative_sd_.at(uniforms(i, 0));
+            shift(i) = normal.at(uniforms(i, 1)) / root_n_;
+        }
+        if (least_ > 0.0) {
+            raised_shares(ratio, shift, out);
+        } else {
+            for (Eigen::Index i = 0; i < out.size(); ++i) {
+                out(i) = share(normal_table(), ratio(i), shift(i));
+            }
         }
         out = out.max(least_share).min(1.0).log();
     }
@@ -131,19 +137,31 @@ class SummarySampler final : public RowSampler {
         return sum;
     }
 
-    /// As keep_at_least() does: every band at least `least_`, then divided by their sum.
-    double raised_share(const NormalTable& normal, double ratio, double shift) const {
-        double all = 0.0;
-        double seen = 0.0;
-        double below = 0.0;  // P(below the band's lower edge)
+    /// As keep_at_least() does: every band at least `least_`, then divided by their sum. Band by band over
+    /// all draws.
+    void raised_shares(const Eigen::ArrayXd& ratio, const Eigen::ArrayXd& shift,
+                       Eigen::Ref<Eigen::ArrayXd> out) const {
+        const NormalTable& normal = normal_table();
+        Eigen::ArrayXd all = Eigen::ArrayXd::Zero(out.size());
+        Eigen::ArrayXd below = all;  // P(below the band's lower edge)
+        Eigen::ArrayXd up_to(out.size());
+        out.setZero();
         for (std::size_t band = 0; band <= edges_.size(); ++band) {
-            const double up_to = band == edges_.size() ? 1.0 : normal.lower(standardised(band, ratio, shift));
-            const double raised = std::max(up_to - below, least_);
-            below = up_to;
+            if (band == edges_.size()) {
+                up_to.setOnes();
+            } else {
+                for (Eigen::Index i = 0; i < out.size(); ++i) {
+                    up_to(i) = normal.lower(standardised(band, ratio(i), shift(i)));
+                }
+            }
+            const Eigen::ArrayXd raised = (up_to - below).max(least_);
             all += raised;
-            seen += seen_[band] ? raised : 0.0;
+            if (seen_[band]) {
+                out += raised;
+            }
+            below.swap(up_to);
         }
-        return seen / all;
+        out /= all;
     }
 
     std::vector<bool> seen_;  // by band

@@ -1,5 +1,5 @@
 // SPDX-License-Identifier: Apache-2.0
-#include "parallel.hpp"
+#include "steelyard/engine/parallel.hpp"
 
 #include <gtest/gtest.h>
 
