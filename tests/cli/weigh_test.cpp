@@ -10,6 +10,7 @@
 #include <nlohmann/json.hpp>
 #include <sstream>
 
+#include "larkmoor_cases.hpp"
 #include "run_program.hpp"
 #include "steelyard/cli/terminal.hpp"
 
@@ -26,17 +27,6 @@ arterial: {ph: 7.28, pco2: 30 mmHg}
 urine: {ph: 6.4, sodium: 60 mmol/L, potassium: 32 mmol/L, chloride: 62 mmol/L}
 observed: {nephrocalcinosis: present}
 )";
-
-std::vector<std::string> larkmoor_cases() {
-    std::vector<std::string> paths;
-    for (const auto& entry : std::filesystem::directory_iterator(STEELYARD_SOURCE_DIR "/docs/cases")) {
-        if (entry.path().extension() == ".yaml") {
-            paths.push_back(entry.path().string());
-        }
-    }
-    std::sort(paths.begin(), paths.end());
-    return paths;
-}
 
 Json report_of(const std::vector<std::string>& arguments, const std::string& input = {}) {
     std::vector<std::string> words = {"weigh", "--as", "json", "--draws", "1000"};
@@ -111,15 +101,7 @@ TEST_P(LarkmoorCase, DropsNothingInSilence) {
     EXPECT_EQ(told, tables["findings"].size()) << "every finding is read, set aside or missing";
 }
 
-INSTANTIATE_TEST_SUITE_P(Folder, LarkmoorCase, ::testing::ValuesIn(larkmoor_cases()),
-                         [](const auto& parameter) {
-                             std::string name = std::filesystem::path(parameter.param).stem().string();
-                             std::replace_if(
-                                 name.begin(), name.end(),
-                                 [](char c) { return std::isalnum(static_cast<unsigned char>(c)) == 0; },
-                                 '_');
-                             return name;
-                         });
+INSTANTIATE_TEST_SUITE_P(Folder, LarkmoorCase, ::testing::ValuesIn(larkmoor_cases()), larkmoor_name);
 
 TEST(LarkmoorCases, AreAtLeastTwelve) {
     EXPECT_GE(larkmoor_cases().size(), 12U);
