@@ -167,7 +167,7 @@ void write_set_aside(const ReportView& view, Page& page) {
     }
 }
 
-/// In a full report they stand with their finding; in a shorter one, those that a reader must not miss.
+/// In a full report they stand with their finding; in a shorter one they have a part of their own.
 void write_remarks(const ReportView& view, Page& page) {
     bool first = true;
     for (const LedgerEntry& entry : view.weighing.ledger) {
