@@ -24,9 +24,22 @@ constexpr std::size_t most_quantities = 120;
 constexpr std::size_t most_limits = 32;
 constexpr std::size_t most_plans = 4096;  // of different sets of entries; beyond, the general way
 
-/// What is known of a panel before anything is computed: the quantities, then four bits.
-using Shape = std::bitset<most_quantities + 4>;
+/// What is known of a panel before anything is computed: the quantities, then three bits.
+struct Shape {
+    std::array<std::uint64_t, 2> words{};
+
+    void set(std::size_t bit, bool value) noexcept {
+        words[bit / 64] |= std::uint64_t{value ? 1U : 0U} << (bit % 64);
+    }
+    bool test(std::size_t bit) const noexcept { return ((words[bit / 64] >> (bit % 64)) & 1U) != 0; }
+    bool operator==(const Shape&) const = default;
+};
 enum ShapeBit : std::size_t { age_known = most_quantities, sex_known, glycosuria_seen };
+struct ShapeHash {
+    std::size_t operator()(const Shape& shape) const noexcept {
+        return shape.words[0] * 0x9E3779B97F4A7C15U ^ shape.words[1] * 0xC2B2AE3D27D4EB4FU;
+    }
+};
 
 struct Step {
     int target = 0;
@@ -39,7 +52,8 @@ struct Step {
 /// How panels of one shape are computed.
 struct Plan {
     std::vector<Step> steps;
-    GateFacts facts;                                            ///< with what all of them have in common
+    std::vector<std::size_t> tables;  ///< those whose finding can be known: the others are missing
+    GateFacts facts;                  ///< with what all of them have in common
     std::vector<std::pair<Known GateFacts::*, int>> gate;       ///< what is known of the gate's quantities
     std::vector<std::pair<std::size_t, std::size_t>> restated;  ///< limits (taken, original)
 };
@@ -82,6 +96,11 @@ struct LimitPlan {
     int quantity = -1;
     std::optional<double> low, high;
 };
+
+std::string_view quantity_id(int number) {
+    const auto at = static_cast<std::size_t>(number);
+    return at < analytes().size() ? analytes()[at].id : derived_quantities()[at - analytes().size()].id;
+}
 
 }  // namespace
 
@@ -152,8 +171,8 @@ class PointReader::Impl {
         if (!compute(*plan, panel)) {
             return false;
         }
-        reading.code.resize(tables_.size());
-        for (std::size_t i = 0; i < tables_.size(); ++i) {
+        reading.code.assign(tables_.size(), static_cast<char>(missing_state));
+        for (const std::size_t i : plan->tables) {
             reading.code[i] = static_cast<char>(state_of(tables_[i], panel));
         }
         reading.gate = gate_of(*plan, panel);
@@ -245,7 +264,7 @@ class PointReader::Impl {
     Shape shape_of(const PointPanel& panel) const {
         Shape shape;
         for (std::size_t i = 0; i < panel.value.size(); ++i) {
-            shape.set(i, !std::isnan(panel.value[i]));
+            shape.set(i, panel.value[i] == panel.value[i]);  // not NaN
         }
         shape.set(age_known, !std::isnan(panel.age));
         shape.set(sex_known, panel.sex != Sex::unknown);
@@ -317,6 +336,16 @@ class PointReader::Impl {
             plan.steps.push_back(one);
         }
         std::reverse(plan.steps.begin(), plan.steps.end());
+
+        for (std::size_t i = 0; i < tables_.size(); ++i) {
+            const auto& members = tables_[i].members;
+            const bool can_be_known = std::any_of(members.begin(), members.end(), [&](const Locator& member) {
+                return member.quantity < 0 || quantities.find(quantity_id(member.quantity)) != nullptr;
+            });
+            if (can_be_known) {
+                plan.tables.push_back(i);
+            }
+        }
 
         plan.facts = detail::gate_facts(panel, quantities, set_->gate);
         for (const auto member : gate_quantities) {
@@ -480,7 +509,7 @@ class PointReader::Impl {
     FeatureLevel pregnant_{-1, -1}, alkali_{-1, -1}, glycosuria_{-1, -1};
     std::vector<FeatureLevel> gfr_conditions_;
     std::bitset<most_quantities> needed_;
-    std::unordered_map<Shape, Plan> plans_;
+    std::unordered_map<Shape, Plan, ShapeHash> plans_;
     Shape last_shape_;
     Plan* last_ = nullptr;
 };
