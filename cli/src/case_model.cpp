@@ -20,7 +20,9 @@ CaseModel::CaseModel(const likelihoods::TableSet& tables, const std::vector<Weig
     }
     for (const likelihoods::EvidenceTable& table : tables.tables) {
         shares_.push_back(likelihoods::band_probabilities(tables, table, causes_));
-        log_shares_.emplace_back(shares_.back().log());
+        const Eigen::ArrayXXd& shares = shares_.back();
+        log_shares_.emplace_back(
+            likelihoods::log_probability(shares.reshaped()).reshaped(shares.rows(), shares.cols()));
     }
 }
 
@@ -32,8 +34,7 @@ Eigen::ArrayXd CaseModel::line(const FindingReading& reading) const {
     for (const Eigen::Index cell : reading.cells) {
         seen += shares(reading.table).row(cell).transpose();
     }
-    // A margin is a sum of probabilities and may pass 1 by a rounding; its logarithm must not be above 0.
-    return seen.min(1.0).log();
+    return likelihoods::log_probability(seen);
 }
 
 CaseModel::Evidence CaseModel::evidence(const likelihoods::Pattern& pattern) const {

@@ -6,7 +6,6 @@
 #include <algorithm>
 #include <memory>
 #include <ostream>
-#include <set>
 
 #include "batch_counts.hpp"
 #include "ordered_work.hpp"
@@ -14,6 +13,7 @@
 #include "rejects.hpp"
 #include "result_row.hpp"
 #include "steelyard/cli/output.hpp"
+#include "unread_columns.hpp"
 
 namespace steelyard::cli {
 namespace {
@@ -104,19 +104,6 @@ class ReportWeigher final : public RowWeigher {
     bool colour_;
 };
 
-void warn_of_columns(const CaseInputs& inputs, const likelihoods::FeatureVocabulary& vocabulary,
-                     std::ostream& err) {
-    std::set<std::vector<std::string>> told;
-    for (const CaseFile& file : inputs.files()) {
-        const auto& names = file.columns.not_read;
-        if (!names.empty() && told.insert(names).second) {
-            err << wrapped(fmt::format("steelyard: {}: not read: {}", visible(file.path),
-                                       columns_in_words(names, vocabulary)),
-                           "", "  ");
-        }
-    }
-}
-
 }  // namespace
 
 int weigh_rows(std::vector<CaseFile> files, const BatchWork& work, const Streams& streams) {
@@ -127,7 +114,7 @@ int weigh_rows(std::vector<CaseFile> files, const BatchWork& work, const Streams
     if (!faults.empty()) {
         throw document::LoadError(faults);
     }
-    warn_of_columns(inputs, for_headers.vocabulary(), streams.err);
+    warn_of_unread_columns(inputs, for_headers.vocabulary(), streams.err);
 
     std::vector<LeftOut> left_out;
     const std::vector<WeighedCause> causes = causes_to_weigh(work.tables, work.priors, work.weigh, left_out);
