@@ -22,6 +22,16 @@ double stirling_rest(double k) {
     return (1.0 / 12.0 - (1.0 / 360.0 - 1.0 / 1260.0 / square) / square) / (k + 1.0);
 }
 
+/// P(x) / P(mode) of the binomial law.
+double height(double trials, double p, double x) {
+    const double odds = p / (1.0 - p);
+    const double mode = std::floor((trials + 1.0) * p);
+    return std::exp((mode + 0.5) * std::log((mode + 1.0) / (odds * (trials - mode + 1.0))) +
+                    (trials + 1.0) * std::log((trials - mode + 1.0) / (trials - x + 1.0)) +
+                    (x + 0.5) * std::log(odds * (trials - x + 1.0) / (x + 1.0)) + stirling_rest(mode) +
+                    stirling_rest(trials - mode) - stirling_rest(x) - stirling_rest(trials - x));
+}
+
 }  // namespace
 
 BinomialSampler::BinomialSampler(std::uint64_t seed, std::uint32_t stream) : seed_(seed), stream_(stream) {}
@@ -41,6 +51,10 @@ double BinomialSampler::uniform() {
     const std::uint64_t high = word() >> 5U;  // 27 bits
     const std::uint64_t low = word() >> 6U;   // 26 bits
     return (static_cast<double>((high << 26U) | low) + 0.5) * 0x1p-53;
+}
+
+double BinomialSampler::coarse() {
+    return (static_cast<double>(word()) + 0.5) * 0x1p-32;
 }
 
 double BinomialSampler::draw(double trials, double p) {
@@ -78,27 +92,20 @@ double BinomialSampler::by_rejection(double trials, double p) {
     const double a = -0.0873 + 0.0248 * b + 0.01 * p;
     const double centre = trials * p + 0.5;
     const double inner = 0.92 - 4.2 / b;
-    const double alpha = (2.83 + 5.1 / b) * sd;
-    const double odds = p / (1.0 - p);
-    const double mode = std::floor((trials + 1.0) * p);
     for (;;) {
-        const double u = uniform() - 0.5;
-        const double v = uniform();
+        const double u = coarse() - 0.5;
+        const double v = coarse();
         const double near = 0.5 - std::abs(u);
-        const double x = std::floor((2.0 * a / near + b) * u + centre);
+        const double place = (2.0 * a / near + b) * u + centre;
+        if (place < 0.0 || place >= trials + 1.0) {
+            continue;
+        }
+        const auto x =
+            static_cast<double>(static_cast<std::int64_t>(place));  // the floor: place is not negative
         if (near >= 0.07 && v <= inner) {
             return x;
         }
-        if (x < 0.0 || x > trials) {
-            continue;
-        }
-        const double height = std::log(v * alpha / (a / (near * near) + b));
-        const double bound = (mode + 0.5) * std::log((mode + 1.0) / (odds * (trials - mode + 1.0))) +
-                             (trials + 1.0) * std::log((trials - mode + 1.0) / (trials - x + 1.0)) +
-                             (x + 0.5) * std::log(odds * (trials - x + 1.0) / (x + 1.0)) +
-                             stirling_rest(mode) + stirling_rest(trials - mode) - stirling_rest(x) -
-                             stirling_rest(trials - x);
-        if (height <= bound) {
+        if (v <= height(trials, p, x) * (a / (near * near) + b) / ((2.83 + 5.1 / b) * sd)) {
             return x;
         }
     }

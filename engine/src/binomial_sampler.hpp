@@ -17,9 +17,11 @@ class BinomialSampler {
     /// @param trials  whole, >= 0   @param p  in [0, 1]
     double draw(double trials, double p);
 
+    double uniform();  ///< in (0, 1), on a grid of 2^-53: what inverts it reaches far into the tail
+
   private:
     std::uint32_t word();
-    double uniform();  // in (0, 1), on a grid of 2^-53
+    double coarse();  // in (0, 1), on a grid of 2^-32: enough to propose and to accept
 
     double by_inversion(double trials, double p);
     double by_rejection(double trials, double p);

@@ -6,8 +6,8 @@
 #include <optional>
 #include <vector>
 
-#include "binomial_sampler.hpp"
 #include "guards.hpp"
+#include "multinomial_sampler.hpp"
 #include "resampler.hpp"
 #include "steelyard/engine/parallel.hpp"
 #include "steelyard/engine/proportion.hpp"
@@ -33,26 +33,8 @@ void check_counts(std::string_view function, const Eigen::Ref<const Eigen::Array
     }
 }
 
-/// Patients in each cell and those after it.
-Eigen::ArrayXd remaining(const Eigen::Ref<const Eigen::ArrayXd>& count) {
-    Eigen::ArrayXd sum(count.size());
-    double running = 0.0;
-    for (Eigen::Index c = count.size() - 1; c >= 0; --c) {
-        running += count(c);
-        sum(c) = running;
-    }
-    return sum;
-}
-
-/// @param out  shape (M), overwritten
-void draw_counts(const Eigen::Ref<const Eigen::ArrayXd>& count, const Eigen::ArrayXd& remaining,
-                 std::uint64_t seed, Eigen::Index replicate, Eigen::Ref<Eigen::VectorXd> out) {
-    BinomialSampler sampler(seed, replicate_streams + static_cast<std::uint32_t>(replicate));
-    double left = remaining(0);
-    for (Eigen::Index c = 0; c < count.size(); ++c) {
-        out(c) = sampler.draw(left, count(c) / std::max(remaining(c), 1.0));
-        left -= out(c);
-    }
+std::uint32_t stream_of(Eigen::Index replicate) {
+    return replicate_streams + static_cast<std::uint32_t>(replicate);
 }
 
 }  // namespace
@@ -71,13 +53,13 @@ Eigen::ArrayXd resample_counts(const Eigen::Ref<const Eigen::ArrayXd>& count, st
     check_counts("resample_counts", count);
     check_between("resample_counts", "replicate", static_cast<double>(replicate), 0.0, most_replicates - 1.0);
     Eigen::VectorXd drawn(count.size());
-    draw_counts(count, remaining(count), seed, replicate, drawn);
+    MultinomialSampler(count).draw(seed, stream_of(replicate), drawn);
     return drawn.array();
 }
 
 Eigen::ArrayXXd resample(const Eigen::ArrayXd& count, const ResamplingOptions& options, Eigen::Index figures,
                          const ReplicateFigures& evaluate) {
-    const Eigen::ArrayXd after = remaining(count);
+    const MultinomialSampler sampler(count);
     // Blocks of about a million weights: enough replicates to share the reading of the features, and bounded.
     const Eigen::Index block = std::clamp<Eigen::Index>((Eigen::Index{1} << 20) / count.size(), 1, 32);
     const Eigen::Index blocks = (options.replicates + block - 1) / block;
@@ -89,7 +71,7 @@ Eigen::ArrayXXd resample(const Eigen::ArrayXd& count, const ResamplingOptions& o
             const Eigen::Index size = std::min(block, options.replicates - first);
             Eigen::MatrixXd weights(count.size(), size);
             for (Eigen::Index r = 0; r < size; ++r) {
-                draw_counts(count, after, options.seed, first + r, weights.col(r));
+                sampler.draw(options.seed, stream_of(first + r), weights.col(r));
             }
             evaluate(weights, result.middleCols(first, size));
         },

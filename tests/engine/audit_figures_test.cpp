@@ -315,7 +315,7 @@ TEST(Reliability, KnowsWhatCalibratedForecastsWouldShow) {
         engine::reliability(two_causes({{0.3, 3.0, 2.0}, {0.8, 1.0, 2.0}}), 1, {.draws = 200000});
     double want = 0.0;
     const auto mass = [](double n, double p, double x) {
-        return std::exp(std::lgamma(n + 1) - std::lgamma(x + 1) - std::lgamma(n - x + 1)) * std::pow(p, x) *
+        return std::tgamma(n + 1) / std::tgamma(x + 1) / std::tgamma(n - x + 1) * std::pow(p, x) *
                std::pow(1 - p, n - x);
     };
     std::vector<std::pair<double, double>> joint;

@@ -25,12 +25,10 @@ using engine::BootstrapInterval;
 constexpr double nan = std::numeric_limits<double>::quiet_NaN();
 constexpr double infinity = std::numeric_limits<double>::infinity();
 
-/// Chi-square of draws against the binomial law, cells with fewer than 10 expected joined; its p.
-double binomial_fit(double trials, double p, int draws) {
-    engine::BinomialSampler sampler(7, 0xc0000000U);
+/// Chi-square of draws against the binomial law, outcomes with fewer than 10 expected joined; its p.
+double binomial_fit(double trials, double p, const std::vector<double>& drawn) {
     std::vector<double> seen(static_cast<std::size_t>(trials) + 1, 0.0);
-    for (int i = 0; i < draws; ++i) {
-        const double x = sampler.draw(trials, p);
+    for (const double x : drawn) {
         EXPECT_TRUE(x >= 0.0 && x <= trials && x == std::floor(x));
         seen[static_cast<std::size_t>(x)] += 1.0;
     }
@@ -39,7 +37,7 @@ double binomial_fit(double trials, double p, int draws) {
     int cells = 0;
     for (std::size_t x = 0; x < seen.size(); ++x) {
         joined += seen[x];
-        expected += draws * boost::math::pdf(law, static_cast<double>(x));
+        expected += static_cast<double>(drawn.size()) * boost::math::pdf(law, static_cast<double>(x));
         if (expected >= 10.0) {
             chi2 += (joined - expected) * (joined - expected) / expected;
             ++cells;
@@ -63,12 +61,50 @@ TEST(BinomialSampler, FollowsTheBinomialLaw) {
                                                                           {1000, 0.3},
                                                                           {100000, 0.001},
                                                                           {100000, 0.7}}) {
-        EXPECT_GT(binomial_fit(trials, p, 40000), 1e-4) << trials << " " << p;
+        engine::BinomialSampler sampler(7, 0xc0000000U);
+        std::vector<double> drawn;
+        for (int i = 0; i < 40000; ++i) {
+            drawn.push_back(sampler.draw(trials, p));
+        }
+        EXPECT_GT(binomial_fit(trials, p, drawn), 1e-4) << trials << " " << p;
     }
     engine::BinomialSampler sampler(7, 1);
     EXPECT_EQ(sampler.draw(0.0, 0.5), 0.0);
     EXPECT_EQ(sampler.draw(9.0, 0.0), 0.0);
     EXPECT_EQ(sampler.draw(9.0, 1.0), 9.0);
+}
+
+/// `drawn` column by column: replicates of one table.
+Eigen::ArrayXXd replicates_of(const Eigen::ArrayXd& count, Eigen::Index replicates) {
+    Eigen::ArrayXXd drawn(count.size(), replicates);
+    for (Eigen::Index r = 0; r < replicates; ++r) {
+        drawn.col(r) = engine::resample_counts(count, 9, r);
+        EXPECT_EQ(drawn.col(r).sum(), count.sum());
+    }
+    return drawn;
+}
+
+TEST(ResampleCounts, FollowTheBinomialLawInEachCellAndInSumsOfCells) {
+    // Few patients (one by one), many in small cells (independent first), and cells over 256 before them.
+    Eigen::ArrayXd few = Eigen::ArrayXd::Constant(20, 2.0);
+    few(3) = 9.0;
+    Eigen::ArrayXd many = Eigen::ArrayXd::Constant(80, 5.0);
+    many(3) = 60.0;
+    many(7) = 1.0;
+    Eigen::ArrayXd mixed = many;
+    mixed(0) = 300.0;
+    mixed(40) = 2000.0;
+    for (const Eigen::ArrayXd& count : {few, many, mixed}) {
+        const double n = count.sum();
+        const Eigen::ArrayXXd drawn = replicates_of(count, 10000);
+        const auto fit = [&](const Eigen::ArrayXd& values, double expected) {
+            return binomial_fit(n, expected / n, {values.data(), values.data() + values.size()});
+        };
+        for (const Eigen::Index cell : {0, 3, 7, 19}) {
+            EXPECT_GT(fit(drawn.row(cell).transpose(), count(cell)), 1e-4) << n << " cell " << cell;
+        }
+        EXPECT_GT(fit(drawn.topRows(15).colwise().sum().transpose(), count.head(15).sum()), 1e-4) << n;
+    }
 }
 
 TEST(ResampleCounts, HasTheMomentsOfTheMultinomialLaw) {

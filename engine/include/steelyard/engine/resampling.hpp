@@ -23,8 +23,8 @@ struct ResamplingOptions {
     std::function<void(double done)> progress = {};  ///< called from the calling thread only
 };
 
-/// One replicate: counts ~ Multinomial(n, count / n), n = sum of count, by binomials conditional on the cells
-/// before.
+/// One replicate: counts ~ Multinomial(n, count / n), n = sum of count, exactly. docs/method.md, "Audit",
+/// says how.
 /// @param count      patients per cell; shape (M), M >= 1; whole, >= 0; their sum in [1, 2^31)
 /// @param replicate  in [0, 2^28)
 /// @returns          shape (M), same sum   @throws DomainError
