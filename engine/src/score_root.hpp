@@ -2,6 +2,7 @@
 #pragma once
 // The one root of a decreasing score, by Newton's method kept inside a bracket.
 
+#include <algorithm>
 #include <cmath>
 #include <limits>
 
@@ -34,7 +35,8 @@ double root_of_score(const Function& at, double start) {
             next = open ? x + (here.score > 0.0 ? stride : -stride) : low + 0.5 * (high - low);
             stride *= 2.0;
         }
-        if (std::abs(next - x) <= 4e-16 * std::abs(x) || next == low || next == high) {
+        // Newton squares what is left, so that after so small a step only rounding is.
+        if (std::abs(next - x) <= 1e-12 * std::max(1.0, std::abs(x))) {
             return next;
         }
         x = next;
