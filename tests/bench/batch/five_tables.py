@@ -15,7 +15,7 @@ FINDINGS = ["serum_potassium", "serum_bicarbonate", "gfr", "urine_ph", "urine_an
 def main(shipped, out):
     out = pathlib.Path(out)
     out.mkdir(parents=True, exist_ok=True)
-    read = lambda name: yaml.load((pathlib.Path(shipped) / name).read_text(), Loader=yaml.BaseLoader)
+    read = lambda name: yaml.safe_load((pathlib.Path(shipped) / name).read_text())
     whole = read("set.yaml")
     few = {key: whole[key] for key in ("format", "title", "caution", "gate", "urgent", "sources")}
     few["title"] = "Five findings"

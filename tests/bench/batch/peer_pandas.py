@@ -23,6 +23,7 @@ def model(tables, priors):
         np.log(np.array([row["probability"]
                          for cause in causes for row in table["rows"] if row["cause"] == cause]))
         for table in tables["findings"]]
+    bayes.class_count_ = np.ones(len(causes))
     bayes.n_features_in_ = len(tables["findings"])
     bayes.n_categories_ = np.array([len(table["bands"]) for table in tables["findings"]])
     return bayes

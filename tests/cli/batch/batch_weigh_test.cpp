@@ -303,7 +303,7 @@ INSTANTIATE_TEST_SUITE_P(
                 "not read: serum_potasium (did you mean serum_potassium?)"},
         BadFile{"same_quantity_twice", "case,serum_urea [mmol/L],serum_urea_nitrogen [mmol/L]\na,3,3\nb,3,\n",
                 5, "serum_urea_nitrogen and serum_urea"}),
-    [](const ::testing::TestParamInfo<BadFile>& info) { return info.param.name; });
+    [](const ::testing::TestParamInfo<BadFile>& one) { return one.param.name; });
 
 TEST(BatchWeigh, DamagedPackedFilesAreNamed) {
     const WorkDir dir;
