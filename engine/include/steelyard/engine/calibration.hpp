@@ -18,7 +18,8 @@ enum class FitStatus {
     found,
     no_case,            ///< nobody has the cause (or one of the causes)
     only_cases,         ///< everybody has it
-    constant_forecast,  ///< all forecasts are equal: a slope has nothing to go by
+    constant_forecast,  ///< all forecasts are equal (for all causes at once: vary in too few ways), so that a
+                        ///< slope has nothing to go by
     separated,          ///< forecasts sort the outcomes without error: the best coefficients are infinite
     too_many_causes,    ///< more causes than the full recalibration is offered for
     no_maximum_reached  ///< the steps ran out; has not been seen to happen

@@ -54,10 +54,10 @@ struct TemperatureFit {
     FitStatus status =
         FitStatus::found;  ///< `separated` when the final cause always leads, so that no finite
                            ///< exponent is best; `constant_forecast` when all forecasts are 1 / K
-    std::optional<IntervalEstimate>
-        exponent;                          ///< Wald, cut at 0; [0, 0] when forecasts mislead and 0 is best
-    std::optional<double> standard_error;  ///< empty also when the exponent is held at 0
-    double loglik = 0.0;                   ///< at the exponent [nats]
+    std::optional<IntervalEstimate> exponent;  ///< Wald, cut at 0. Held at 0 when forecasts mislead: the
+                                               ///< upper limit is then that of one Newton step past 0
+    std::optional<double> standard_error;      ///< empty also when the exponent is held at 0
+    double loglik = 0.0;                       ///< at the exponent [nats]
 };
 /// @param level  in (0, 1)   @throws DomainError
 [[nodiscard]] TemperatureFit temperature(const AuditSample& sample, double level = 0.95);

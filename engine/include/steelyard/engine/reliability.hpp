@@ -30,9 +30,9 @@ struct ReliabilityBin {
 ///
 /// That is the law of sum over bins of |X_b - sum p| / n, where X_b is the number of successes of independent
 /// trials with the bin's own forecasts. The law of X_b is computed exactly, trial by trial, while its
-/// variance is below 400, and as normal beyond (error of the mean then below 0.1 %). The mean is a sum over
-/// bins; the 95th percentile is of `draws` independent draws of the bins by inversion (Philox streams
-/// 0xb0000000 on), the same for any thread count.
+/// variance is below 100, and taken as normal from there on (0.1 % of the mean) and where counts are not
+/// whole. The mean is a sum over bins; the 95th percentile is of `draws` independent draws of the bins by
+/// inversion (Philox streams 0xb0000000 on), the same for any thread count.
 struct CalibrationError {
     double value = 0.0;
     double expected_if_calibrated = 0.0;
