@@ -339,6 +339,15 @@ TEST(Reliability, KnowsWhatCalibratedForecastsWouldShow) {
     EXPECT_NEAR(joint[at].first, got.error.percentile_95_if_calibrated, 1e-12);
 }
 
+TEST(Reliability, ExpectsTheSameOfACauseAndOfItsOpposite) {
+    const AuditSample sample = two_causes({{0.97, 10.0, 390.0}, {0.93, 3.0, 40.0}, {0.55, 20.0, 30.0}});
+    const engine::CalibrationError with = engine::reliability(sample, 1).error;
+    const engine::CalibrationError without = engine::reliability(sample, 0).error;
+    EXPECT_TRUE(near_rel(with.value, without.value, 1e-12));
+    EXPECT_TRUE(near_rel(with.expected_if_calibrated, without.expected_if_calibrated, 1e-12));
+    EXPECT_TRUE(near_rel(with.percentile_95_if_calibrated, without.percentile_95_if_calibrated, 0.02));
+}
+
 TEST(Reliability, PassesFromTheExactLawToTheNormalOneWithoutAStep) {
     // Variances of 99.96 and 100.17 on either side of the limit of 100.
     const auto expected = [](double patients) {

@@ -12,8 +12,8 @@ namespace steelyard::engine {
 
 /// What one group adds to each pattern.
 struct GroupEvidence {
-    Eigen::ArrayXXd loglik;  ///< shape (G, K) [nats]: sum over its observed findings of ln P(band | cause),
-                             ///< not yet weighed; finite, <= 0; 0 when none was observed
+    Eigen::ArrayXXd loglik;   ///< shape (G, K) [nats]: sum over its observed findings of ln P(band | cause),
+                              ///< not yet weighed; finite, <= 0; 0 when none was observed
     Eigen::ArrayXd observed;  ///< shape (G): how many were observed, m; whole, >= 0
 };
 
