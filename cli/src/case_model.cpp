@@ -11,15 +11,18 @@ namespace steelyard::cli {
 using likelihoods::FindingReading;
 using likelihoods::Use;
 
-CaseModel::CaseModel(const likelihoods::TableSet& tables, const Weighing& weighing) : tables_(&tables) {
-    log_prior_.resize(static_cast<Eigen::Index>(weighing.causes.size()));
-    for (const WeighedCause& cause : weighing.causes) {
+CaseModel::CaseModel(const likelihoods::TableSet& tables, const std::vector<WeighedCause>& causes)
+    : tables_(&tables) {
+    log_prior_.resize(static_cast<Eigen::Index>(causes.size()));
+    for (const WeighedCause& cause : causes) {
         log_prior_(static_cast<Eigen::Index>(causes_.size())) = std::log(cause.prior);
         causes_.push_back(cause.id);
     }
     for (const likelihoods::EvidenceTable& table : tables.tables) {
         shares_.push_back(likelihoods::band_probabilities(tables, table, causes_));
-        log_shares_.emplace_back(shares_.back().log());
+        const Eigen::ArrayXXd& shares = shares_.back();
+        log_shares_.emplace_back(
+            likelihoods::log_probability(shares.reshaped()).reshaped(shares.rows(), shares.cols()));
     }
 }
 
@@ -31,8 +34,7 @@ Eigen::ArrayXd CaseModel::line(const FindingReading& reading) const {
     for (const Eigen::Index cell : reading.cells) {
         seen += shares(reading.table).row(cell).transpose();
     }
-    // A margin is a sum of probabilities and may pass 1 by a rounding; its logarithm must not be above 0.
-    return seen.min(1.0).log();
+    return likelihoods::log_probability(seen);
 }
 
 CaseModel::Evidence CaseModel::evidence(const likelihoods::Pattern& pattern) const {

@@ -11,11 +11,12 @@ std::string harmless(std::string_view text) {
     std::string result;
     while (true) {
         const std::size_t end = text.find('\n');
-        result += visible(text.substr(0, end));
+        const bool with_return = end != std::string_view::npos && end > 0 && text[end - 1] == '\r';
+        result += visible(text.substr(0, with_return ? end - 1 : end));
         if (end == std::string_view::npos) {
             return result;
         }
-        result += '\n';
+        result += with_return ? "\r\n" : "\n";
         text.remove_prefix(end + 1);
     }
 }

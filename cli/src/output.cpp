@@ -6,12 +6,15 @@
 #include <sys/stat.h>
 #include <unistd.h>
 
+#include <algorithm>
 #include <cerrno>
 #include <cstdio>
+#include <optional>
 #include <ostream>
+#include <sstream>
 #include <stdexcept>
 #include <system_error>
-#include <vector>
+#include <utility>
 
 namespace steelyard::cli {
 namespace {
@@ -33,67 +36,104 @@ int write_fully(int descriptor, std::string_view text) {
     return 0;
 }
 
-/// Owns a temporary file: closed, and removed unless it has been moved into place.
-class TemporaryFile {
+/// A file that takes its name only when it is whole. Where the system allows it has no name before, so that
+/// nothing remains of it when the program is stopped; elsewhere it has a temporary one, and is removed.
+class UnnamedFile {
   public:
-    explicit TemporaryFile(const std::string& beside)
-        : name_(beside + ".XXXXXX"), descriptor_(mkstemp(name_.data())) {
+    explicit UnnamedFile(const std::string& path) : path_(path) {
+        const std::size_t slash = path.rfind('/');
+        const std::string folder =
+            slash == std::string::npos ? "." : path.substr(0, std::max<std::size_t>(slash, 1));
+        // NOLINTNEXTLINE(cppcoreguidelines-pro-type-vararg)
+        descriptor_ = ::open(folder.c_str(), O_TMPFILE | O_RDWR | O_CLOEXEC, 0600);
         if (descriptor_ < 0) {
-            throw OutputError(fmt::format("cannot write {}: {}", beside, reason(errno)));
+            name_ = path + ".XXXXXX";
+            descriptor_ = mkstemp(name_.data());
+        }
+        if (descriptor_ < 0) {
+            throw OutputError(fmt::format("cannot write {}: {}", path, reason(errno)));
         }
     }
-    TemporaryFile(const TemporaryFile&) = delete;
-    TemporaryFile& operator=(const TemporaryFile&) = delete;
-    TemporaryFile(TemporaryFile&&) = delete;
-    TemporaryFile& operator=(TemporaryFile&&) = delete;
-    ~TemporaryFile() {
-        if (descriptor_ >= 0) {
-            close(descriptor_);
-        }
-        if (!moved_) {
+    UnnamedFile(const UnnamedFile&) = delete;
+    UnnamedFile& operator=(const UnnamedFile&) = delete;
+    UnnamedFile(UnnamedFile&&) = delete;
+    UnnamedFile& operator=(UnnamedFile&&) = delete;
+    ~UnnamedFile() {
+        close(descriptor_);
+        if (!name_.empty()) {
             unlink(name_.c_str());
         }
     }
 
-    void write_all(std::string_view text) {
-        if (const int error = write_fully(descriptor_, text); error != 0) {
-            throw OutputError(fmt::format("cannot write {}: {}", name_, reason(error)));
-        }
-        // mkstemp gives 0600; a result is readable as any file the user makes.
+    void write(std::string_view text) { check(write_fully(descriptor_, text)); }
+
+    void take_name() {
+        // A result is readable as any file the user makes.
         const mode_t mask = umask(0);
         umask(mask);
-        if (fchmod(descriptor_, 0666U & ~mask) != 0 || fsync(descriptor_) != 0) {
-            throw OutputError(fmt::format("cannot write {}: {}", name_, reason(errno)));
+        check(fchmod(descriptor_, 0666U & ~mask) != 0 || fsync(descriptor_) != 0 ? errno : 0);
+        if (name_.empty()) {
+            link_beside();
         }
-    }
-
-    void move_to(const std::string& path) {
-        if (std::rename(name_.c_str(), path.c_str()) != 0) {
-            throw OutputError(fmt::format("cannot write {}: {}", path, reason(errno)));
-        }
-        moved_ = true;
+        check(std::rename(name_.c_str(), path_.c_str()) != 0 ? errno : 0);
+        name_.clear();
     }
 
   private:
-    std::string name_;
-    int descriptor_;
-    bool moved_ = false;
+    void check(int error) const {
+        if (error != 0) {
+            throw OutputError(fmt::format("cannot write {}: {}", path_, reason(error)));
+        }
+    }
+
+    /// A file without a name cannot replace one that has it; it gets a name of its own first.
+    void link_beside() {
+        const std::string itself = fmt::format("/proc/self/fd/{}", descriptor_);
+        for (int attempt = 0;; ++attempt) {
+            std::string beside = fmt::format("{}.{}-{}", path_, getpid(), attempt);
+            if (linkat(AT_FDCWD, itself.c_str(), AT_FDCWD, beside.c_str(), AT_SYMLINK_FOLLOW) == 0) {
+                name_ = std::move(beside);
+                return;
+            }
+            check(errno != EEXIST || attempt == 100 ? errno : 0);
+        }
+    }
+
+    std::string path_;
+    std::string name_;  ///< of the temporary file; empty while it has none
+    int descriptor_ = -1;
 };
 
-void write_to_device(const std::string& path, std::string_view text) {
-    const int descriptor =
-        ::open(path.c_str(), O_WRONLY | O_CLOEXEC);  // NOLINT(cppcoreguidelines-pro-type-vararg)
-    if (descriptor < 0) {
-        throw OutputError(fmt::format("cannot write {}: {}", path, reason(errno)));
+/// A device or a pipe: it cannot be replaced by renaming and takes the text as it comes.
+class Device {
+  public:
+    explicit Device(const std::string& path)
+        // NOLINTNEXTLINE(cppcoreguidelines-pro-type-vararg)
+        : path_(path), descriptor_(::open(path.c_str(), O_WRONLY | O_CLOEXEC)) {
+        check(descriptor_ < 0 ? errno : 0);
     }
-    int error = write_fully(descriptor, text);
-    if (close(descriptor) != 0 && error == 0) {
-        error = errno;
+    Device(const Device&) = delete;
+    Device& operator=(const Device&) = delete;
+    Device(Device&&) = delete;
+    Device& operator=(Device&&) = delete;
+    ~Device() {
+        if (descriptor_ >= 0) {
+            close(descriptor_);
+        }
     }
-    if (error != 0) {
-        throw OutputError(fmt::format("cannot write {}: {}", path, reason(error)));
+
+    void write(std::string_view text) const { check(write_fully(descriptor_, text)); }
+    void finish() { check(close(std::exchange(descriptor_, -1)) != 0 ? errno : 0); }
+
+  private:
+    void check(int error) const {
+        if (error != 0) {
+            throw OutputError(fmt::format("cannot write {}: {}", path_, reason(error)));
+        }
     }
-}
+    std::string path_;
+    int descriptor_;
+};
 
 }  // namespace
 
@@ -106,18 +146,69 @@ void write_result(const std::string& path, std::string_view text, std::ostream& 
 }
 
 void write_whole(const std::string& path, std::string_view text) {
-    // A device or a pipe cannot be replaced by renaming; it takes the text as it comes.
-    struct stat status {};
-    if (stat(path.c_str(), &status) == 0 && !S_ISREG(status.st_mode)) {
-        if (S_ISDIR(status.st_mode)) {
+    std::ostringstream unused;
+    ResultWriter writer(path, unused);
+    writer.write(text);
+    writer.finish();
+}
+
+class ResultWriter::Target {
+  public:
+    explicit Target(const std::string& path) {
+        struct stat status {};
+        const bool there = stat(path.c_str(), &status) == 0;
+        if (there && S_ISDIR(status.st_mode)) {
             throw OutputError(fmt::format("cannot write {}: it is a folder", path));
         }
-        write_to_device(path, text);
-        return;
+        if (there && !S_ISREG(status.st_mode)) {
+            device_.emplace(path);
+        } else {
+            file_.emplace(path);
+        }
     }
-    TemporaryFile file(path);
-    file.write_all(text);
-    file.move_to(path);
+    void write(std::string_view text) {
+        if (device_) {
+            device_->write(text);
+        } else {
+            file_->write(text);
+        }
+    }
+    void finish() {
+        if (device_) {
+            device_->finish();
+        } else {
+            file_->take_name();
+        }
+    }
+
+  private:
+    std::optional<UnnamedFile> file_;
+    std::optional<Device> device_;
+};
+
+ResultWriter::ResultWriter(const std::string& path, std::ostream& out)
+    : file_(path.empty() || path == "-" ? nullptr : std::make_unique<Target>(path)), out_(&out) {}
+
+ResultWriter::~ResultWriter() = default;
+
+void ResultWriter::write(std::string_view text) {
+    if (file_) {
+        file_->write(text);
+    } else {
+        out_->write(text.data(), static_cast<std::streamsize>(text.size()));
+    }
+}
+
+bool ResultWriter::wanted() const {
+    return file_ || out_->good();
+}
+
+void ResultWriter::finish() {
+    if (file_) {
+        file_->finish();
+    } else {
+        out_->flush();
+    }
 }
 
 }  // namespace steelyard::cli

@@ -131,11 +131,13 @@ std::vector<Panel> read_cases(std::string_view text, const std::string& file,
 }
 
 std::vector<Panel> load_cases(const std::vector<std::string>& paths,
-                              const likelihoods::FeatureVocabulary& vocabulary, Diagnostics& faults) {
+                              const likelihoods::FeatureVocabulary& vocabulary, Diagnostics& faults,
+                              const std::string* standard_input) {
     std::vector<Panel> all;
     std::map<std::string, document::SourcePosition> seen;
     for (const std::string& path : paths) {
-        const auto text = document::read_text(path, faults);
+        const auto text = path == "-" && standard_input != nullptr ? std::optional(*standard_input)
+                                                                   : document::read_text(path, faults);
         if (!text) {
             continue;
         }

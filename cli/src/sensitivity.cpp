@@ -204,7 +204,7 @@ const std::vector<std::string>& burdens() {
 
 Sensitivity sensitivity_of(const TableSet& tables, const priors::PriorSet& priors, const Weighing& weighing,
                            const SensitivityOptions& options) {
-    const CaseModel model(tables, weighing);
+    const CaseModel model(tables, weighing.causes);
     const Pattern& pattern = weighing.pattern;
     const CaseModel::Evidence evidence = model.evidence(pattern);
     const Eigen::ArrayXd log_likelihood = evidence.log_likelihood();
@@ -256,6 +256,10 @@ Sensitivity sensitivity_of(const TableSet& tables, const priors::PriorSet& prior
     result.fit = fit_of(model, weighing, options.seed);
     find_next_tests(model, weighing, options.burden, result);
     return result;
+}
+
+std::vector<ValueEdge> value_edges_of(const TableSet& tables, const Weighing& weighing) {
+    return value_edges(CaseModel(tables, weighing.causes), weighing);
 }
 
 }  // namespace steelyard::cli

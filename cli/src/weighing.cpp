@@ -14,23 +14,6 @@ namespace {
 
 using likelihoods::Use;
 
-/// Causes to weigh, in the order of the tables, with those left out named.
-std::vector<WeighedCause> causes_to_weigh(const likelihoods::TableSet& tables, const priors::PriorSet& priors,
-                                          const WeighOptions& options, std::vector<LeftOut>& left_out) {
-    std::vector<WeighedCause> causes;
-    for (const likelihoods::Cause& cause : tables.causes) {
-        if (const priors::PriorCause* prior = priors.find(cause.id)) {
-            causes.push_back({cause.id, cause.title, cause.parts, prior->probability, 0.0});
-        } else {
-            const bool asked = std::find(options.excluded.begin(), options.excluded.end(), cause.id) !=
-                               options.excluded.end();
-            left_out.push_back({cause.id, cause.title,
-                                asked ? "excluded on the command line" : "the prior set does not name it"});
-        }
-    }
-    return causes;
-}
-
 /// A line is the difference of two rows and rests on the weaker of them: Basis is ordered from study to
 /// memory.
 WeightByBasis weight_by_basis(const likelihoods::TableSet& tables, const std::vector<LedgerEntry>& ledger,
@@ -70,13 +53,7 @@ void weigh_findings(const likelihoods::TableSet& tables, const likelihoods::Patt
     for (std::size_t k = 0; k < result.causes.size(); ++k) {
         result.causes[k].posterior = probability(static_cast<Eigen::Index>(k));
     }
-    // Ranked on the log scale: probabilities near 0 may tie after rounding where their logarithms do not.
-    result.ranking.resize(result.causes.size());
-    std::iota(result.ranking.begin(), result.ranking.end(), std::size_t{0});
-    std::stable_sort(result.ranking.begin(), result.ranking.end(), [&](std::size_t a, std::size_t b) {
-        return ledger.log_posterior(static_cast<Eigen::Index>(a)) >
-               ledger.log_posterior(static_cast<Eigen::Index>(b));
-    });
+    result.ranking = ranked(engine::log_scores(log_prior, loglik, weights));
 
     const auto leader = static_cast<Eigen::Index>(result.ranking[0]);
     const auto runner_up = static_cast<Eigen::Index>(result.ranking[1]);
@@ -106,6 +83,31 @@ void weigh_findings(const likelihoods::TableSet& tables, const likelihoods::Patt
 }
 
 }  // namespace
+
+std::vector<WeighedCause> causes_to_weigh(const likelihoods::TableSet& tables, const priors::PriorSet& priors,
+                                          const WeighOptions& options, std::vector<LeftOut>& left_out) {
+    std::vector<WeighedCause> causes;
+    for (const likelihoods::Cause& cause : tables.causes) {
+        if (const priors::PriorCause* prior = priors.find(cause.id)) {
+            causes.push_back({cause.id, cause.title, cause.parts, prior->probability, 0.0});
+        } else {
+            const bool asked = std::find(options.excluded.begin(), options.excluded.end(), cause.id) !=
+                               options.excluded.end();
+            left_out.push_back({cause.id, cause.title,
+                                asked ? "excluded on the command line" : "the prior set does not name it"});
+        }
+    }
+    return causes;
+}
+
+std::vector<std::size_t> ranked(const Eigen::ArrayXd& log_scores) {
+    std::vector<std::size_t> ranking(static_cast<std::size_t>(log_scores.size()));
+    std::iota(ranking.begin(), ranking.end(), std::size_t{0});
+    std::stable_sort(ranking.begin(), ranking.end(), [&](std::size_t a, std::size_t b) {
+        return log_scores(static_cast<Eigen::Index>(a)) > log_scores(static_cast<Eigen::Index>(b));
+    });
+    return ranking;
+}
 
 Weighing weigh_case(const likelihoods::TableSet& tables, const priors::PriorSet& priors,
                     likelihoods::Panel panel, const WeighOptions& options) {

@@ -11,16 +11,13 @@
 namespace steelyard::likelihoods::detail {
 namespace {
 
-std::vector<FindingReading*> members_of(const TableSet& set, const std::vector<std::string>& names,
+/// @param tables  indices into the set's tables, and so into the findings
+std::vector<FindingReading*> members_of(const std::vector<std::size_t>& tables,
                                         std::vector<FindingReading>& findings) {
     std::vector<FindingReading*> members;
-    for (const std::string& name : names) {
-        const auto found = std::find_if(findings.begin(), findings.end(), [&](const FindingReading& reading) {
-            return set.tables[reading.table].finding == name;
-        });
-        if (found != findings.end()) {
-            members.push_back(&*found);
-        }
+    members.reserve(tables.size());
+    for (const std::size_t table : tables) {
+        members.push_back(&findings[table]);
     }
     return members;
 }
@@ -29,23 +26,24 @@ std::vector<FindingReading*> members_of(const TableSet& set, const std::vector<s
 /// when they are missing. A missing one that is preferred to what is read is not barred: it would be read.
 void prefer(const TableSet& set, std::vector<FindingReading>& findings) {
     for (const OneOf& list : set.one_of) {
-        const std::vector<FindingReading*> members = members_of(set, list.findings, findings);
+        const std::vector<FindingReading*> members = members_of(list.tables, findings);
         const auto first = std::find_if(members.begin(), members.end(), [](const FindingReading* member) {
             return member->use == Use::read;
         });
         if (first == members.end()) {
             continue;
         }
-        const std::string reason =
-            fmt::format("the {} is read in its place", in_sentence(set.tables[(*first)->table].title));
+        const auto reason = [&] {
+            return fmt::format("the {} is read in its place", in_sentence(set.tables[(*first)->table].title));
+        };
         for (auto later = first + 1; later != members.end(); ++later) {
             FindingReading* member = *later;
             if (member->use == Use::read) {
                 member->use = Use::set_aside;
-                member->why_not = reason;
+                member->why_not = reason();
                 member->passed_over = true;
             } else if (member->use == Use::missing && member->barred.empty()) {
-                member->barred = reason;
+                member->barred = reason();
                 member->passed_over = true;
             }
         }
@@ -54,7 +52,7 @@ void prefer(const TableSet& set, std::vector<FindingReading>& findings) {
 
 void weigh_groups(const TableSet& set, std::vector<FindingReading>& findings) {
     for (const Group& group : set.groups) {
-        std::vector<FindingReading*> members = members_of(set, group.findings, findings);
+        std::vector<FindingReading*> members = members_of(group.tables, findings);
         std::erase_if(members, [](const FindingReading* member) { return member->use != Use::read; });
         if (members.empty()) {
             continue;

@@ -3,69 +3,15 @@
 
 #include <fmt/format.h>
 
-#include "band_edges.hpp"
+#include "condition_value.hpp"
 #include "quantity_text.hpp"
 #include "wording.hpp"
 
 namespace steelyard::likelihoods::detail {
 namespace {
 
-enum class Answer { holds, fails, unknown };
-
-/// The answer for a whole interval: unknown when part of it satisfies the limit and part does not.
-Answer combine(bool low_end, bool high_end) {
-    if (low_end == high_end) {
-        return low_end ? Answer::holds : Answer::fails;
-    }
-    return Answer::unknown;
-}
-
-/// `value >= limit` at both ends. An open upper end on the limit never reaches it.
-Answer at_least(const Interval& value, double limit) {
-    return combine(at_or_above(value.low, limit),
-                   value.high_open ? strictly_above(value.high, limit) : at_or_above(value.high, limit));
-}
-
-/// `value > limit` at both ends. An open lower end on the limit is above it.
-Answer above(const Interval& value, double limit) {
-    return combine(value.low_open ? at_or_above(value.low, limit) : strictly_above(value.low, limit),
-                   strictly_above(value.high, limit));
-}
-
-Answer negate(Answer answer) {
-    switch (answer) {
-        case Answer::holds:
-            return Answer::fails;
-        case Answer::fails:
-            return Answer::holds;
-        case Answer::unknown:
-            break;
-    }
-    return Answer::unknown;
-}
-
-Answer check_value(const Condition& condition, const Interval& value) {
-    bool unknown = false;
-    const auto settle = [&](const std::optional<double>& limit, auto compare, bool negated) {
-        if (!limit) {
-            return true;
-        }
-        const Answer raw = compare(value, *limit);
-        const Answer answer = negated ? negate(raw) : raw;
-        unknown = unknown || answer == Answer::unknown;
-        return answer != Answer::fails;
-    };
-    const bool passes = settle(condition.at_least, at_least, false) &&
-                        settle(condition.above, above, false) && settle(condition.at_most, above, true) &&
-                        settle(condition.below, at_least, true);
-    if (!passes) {
-        return Answer::fails;
-    }
-    return unknown ? Answer::unknown : Answer::holds;
-}
-
 struct Checked {
-    Answer answer = Answer::unknown;
+    Verdict answer = Verdict::unknown;
     std::string known;  ///< `urine sodium 12 mmol/L`, `urine sodium not given`
     bool given = true;  ///< something is known of the subject, if only a limit
 };
@@ -76,21 +22,21 @@ Checked check(const TableSet& set, const Condition& condition, const Panel& pane
     if (condition.is_feature) {
         const auto seen = panel.observed.find(condition.subject);
         if (seen == panel.observed.end()) {
-            return {Answer::unknown, fmt::format("\"{}\" is not stated", title), false};
+            return {Verdict::unknown, fmt::format("\"{}\" is not stated", title), false};
         }
         const bool holds = seen->second.level == condition.level;
-        return {holds ? Answer::holds : Answer::fails,
+        return {holds ? Verdict::holds : Verdict::fails,
                 fmt::format("{}: {}", title, level_in_words(seen->second.level)), true};
     }
     const QuantityValue* quantity = quantities.find(condition.subject);
     if (quantity == nullptr) {
-        return {Answer::unknown, title + " not given", false};
+        return {Verdict::unknown, title + " not given", false};
     }
     const std::string value = known_as(panel, condition.subject, *quantity);
-    const Answer answer = check_value(condition, quantity->value);
+    const Verdict answer = check_value(condition, quantity->value);
     return {answer,
-            answer == Answer::unknown ? fmt::format("{} known only as {}", title, value)
-                                      : fmt::format("{} {}", title, value),
+            answer == Verdict::unknown ? fmt::format("{} known only as {}", title, value)
+                                       : fmt::format("{} {}", title, value),
             true};
 }
 
@@ -138,11 +84,11 @@ Applicability check_conditions(const TableSet& set, const std::vector<Condition>
     for (const Condition& condition : conditions) {
         const Checked checked = check(set, condition, panel, quantities);
         switch (checked.answer) {
-            case Answer::holds:
+            case Verdict::holds:
                 break;
-            case Answer::fails:
+            case Verdict::fails:
                 return {false, true, fmt::format("{} ({})", condition.otherwise, checked.known), {}, {}};
-            case Answer::unknown:
+            case Verdict::unknown:
                 if (!condition.set_aside_when_unknown) {
                     if (checked.given) {
                         result.remarks.push_back("could not be checked: " + checked.known);

@@ -7,6 +7,7 @@
 #include <initializer_list>
 #include <utility>
 
+#include "derivation_steps.hpp"
 #include "steelyard/likelihoods/box.hpp"
 #include "steelyard/likelihoods/chemistry.hpp"
 
@@ -14,7 +15,11 @@ namespace steelyard::likelihoods {
 namespace {
 
 using Ids = std::vector<std::string_view>;
-using Values = std::vector<double>;
+using detail::DerivationStep;
+using detail::FormulaContext;
+using detail::PointFormula;
+using Values = const double*;
+using Context = const FormulaContext&;
 
 /// The equation for GFR wants mg/dL, by the molar mass of the analyte table (113.12 g/mol).
 constexpr double umol_l_to_mg_dl = 113.120 / 1e4;
@@ -24,7 +29,13 @@ constexpr double umol_to_mmol = 1e-3;
 /// Computes quantity after quantity into one result; later ones may rest on earlier ones.
 class Derivation {
   public:
-    Derivation(const Panel& panel, const ChemistrySettings& settings) : panel_(panel), settings_(settings) {
+    /// @param steps  when given, what would be computed is noted there in place of being computed, as if
+    /// every formula had a value
+    Derivation(const Panel& panel, const ChemistrySettings& settings,
+               std::vector<DerivationStep>* steps = nullptr)
+        : panel_(panel),
+          context_{settings, panel.age.value_or(0.0), panel.sex == Sex::female},
+          steps_(steps) {
         for (const auto& [id, reading] : panel.measured) {
             if (const Analyte* analyte = find_analyte(id)) {
                 result_.known[id] = {reading.value, analyte->unit, Origin::measured, {}, {}};
@@ -104,7 +115,7 @@ class Derivation {
 
     /// One derived quantity by its formula. @param domain  what is required, in words, where the formula has
     /// no value
-    void compute(std::string_view id, const Ids& inputs, const Formula& formula, std::string_view domain = {},
+    void compute(std::string_view id, const Ids& inputs, PointFormula formula, std::string_view domain = {},
                  std::string remark = {}) {
         if (has(id)) {
             return;  // given in the case
@@ -113,36 +124,47 @@ class Derivation {
             lacks(id, std::move(absent));
             return;
         }
-        if (const std::optional<Interval> value = image_of_box(box_of(inputs), formula)) {
+        if (const std::optional<Interval> value = image(id, inputs, formula)) {
             keep(id, find_derived(id)->unit, *value, inputs, std::move(remark));
         } else {
             lacks(id, {std::string(domain)});
         }
     }
 
+    std::optional<Interval> image(std::string_view id, const Ids& inputs, PointFormula formula) {
+        if (steps_ != nullptr) {
+            steps_->push_back({id, inputs, formula});
+            return Interval::point(1.0);
+        }
+        return image_of_box(box_of(inputs),
+                            [&](const std::vector<double>& x) { return formula(x.data(), context_); });
+    }
+
     /// A stand-in for serum bicarbonate. @returns whether there is one now
-    bool stand_in(const Ids& inputs, const Formula& formula, std::string remark) {
+    bool stand_in(const Ids& inputs, PointFormula formula, std::string remark) {
         if (has("serum_bicarbonate")) {
             return true;
         }
         if (!missing(inputs).empty()) {
             return false;
         }
-        if (const std::optional<Interval> value = image_of_box(box_of(inputs), formula)) {
+        if (const std::optional<Interval> value = image("serum_bicarbonate", inputs, formula)) {
             keep("serum_bicarbonate", "mmol/L", *value, inputs, std::move(remark));
         }
         return has("serum_bicarbonate");
     }
 
     void blood_gas() {
-        const Formula henderson = [](const Values& x) { return chemistry::bicarbonate_from_gas(x[0], x[1]); };
-        const Formula same = [](const Values& x) { return x[0]; };
+        const PointFormula henderson = [](Values x, Context) {
+            return chemistry::bicarbonate_from_gas(x[0], x[1]);
+        };
+        const PointFormula same = [](Values x, Context) { return x[0]; };
         const bool venous_only = !missing({"arterial_ph", "arterial_pco2"}).empty() &&
                                  missing({"venous_ph", "venous_pco2"}).empty();
         compute("bicarbonate_from_gas",
                 venous_only ? Ids{"venous_ph", "venous_pco2"} : Ids{"arterial_ph", "arterial_pco2"},
                 henderson, "a pCO2 above 0");
-        const auto less_dissolved = [](const Values& x) {
+        const PointFormula less_dissolved = [](Values x, Context) {
             return chemistry::bicarbonate_from_total_co2(x[0]);
         };
         stand_in({"serum_total_co2"}, less_dissolved, "bicarbonate taken as total CO2 less 1 mmol/L") ||
@@ -154,37 +176,36 @@ class Derivation {
     }
 
     void serum() {
-        const ChemistrySettings& s = settings_;
         compute("anion_gap", {"serum_sodium", "serum_chloride", "serum_bicarbonate"},
-                [](const Values& x) { return chemistry::anion_gap(x[0], x[1], x[2]); });
-        compute("anion_gap_corrected", {"anion_gap", "serum_albumin"}, [s](const Values& x) {
-            return chemistry::anion_gap_corrected(x[0], x[1], s.albumin_slope, s.albumin_reference);
-        });
+                [](Values x, Context) { return chemistry::anion_gap(x[0], x[1], x[2]); });
+        compute("anion_gap_corrected", {"anion_gap", "serum_albumin"},
+                [](Values x, Context c) { return corrected(x[0], x[1], c.settings); });
         delta_ratio();
-        compute("expected_pco2", {"serum_bicarbonate"}, [s](const Values& x) {
-            return chemistry::expected_pco2(x[0], s.expected_pco2_slope, s.expected_pco2_intercept);
+        compute("expected_pco2", {"serum_bicarbonate"}, [](Values x, Context c) {
+            return chemistry::expected_pco2(x[0], c.settings.expected_pco2_slope,
+                                            c.settings.expected_pco2_intercept);
         });
         compute("chloride_sodium_ratio", {"serum_chloride", "serum_sodium"},
-                [](const Values& x) { return chemistry::ratio(x[0], x[1]); });
+                [](Values x, Context) { return chemistry::ratio(x[0], x[1]); });
         compute("serum_osmolality_estimate", {"serum_sodium", "serum_glucose", "serum_urea"},
-                [](const Values& x) { return chemistry::serum_osmolality(x[0], x[1], x[2]); });
+                [](Values x, Context) { return chemistry::serum_osmolality(x[0], x[1], x[2]); });
         compute("sodium_corrected", {"serum_sodium", "serum_glucose"},
-                [](const Values& x) { return chemistry::sodium_corrected(x[0], x[1]); });
+                [](Values x, Context) { return chemistry::sodium_corrected(x[0], x[1]); });
+    }
+
+    static double corrected(double gap, double albumin, const ChemistrySettings& s) {
+        return chemistry::anion_gap_corrected(gap, albumin, s.albumin_slope, s.albumin_reference);
+    }
+    static double delta(double gap_corrected, double bicarbonate, const ChemistrySettings& s) {
+        return chemistry::delta_ratio(gap_corrected, bicarbonate, s.anion_gap_reference,
+                                      s.bicarbonate_reference);
     }
 
     /// Bicarbonate stands in the gap and in the denominator, so the ratio is evaluated from what the gap was
     /// made of.
     void delta_ratio() {
-        const ChemistrySettings s = settings_;
-        const auto of = [s](double corrected, double bicarbonate) {
-            return chemistry::delta_ratio(corrected, bicarbonate, s.anion_gap_reference,
-                                          s.bicarbonate_reference);
-        };
-        const auto corrected = [s](double gap, double albumin) {
-            return chemistry::anion_gap_corrected(gap, albumin, s.albumin_slope, s.albumin_reference);
-        };
-        const std::string domain =
-            fmt::format("a serum bicarbonate below its reference of {} mmol/L", s.bicarbonate_reference);
+        const std::string domain = fmt::format("a serum bicarbonate below its reference of {} mmol/L",
+                                               context_.settings.bicarbonate_reference);
         if (!has("anion_gap_corrected")) {
             if (!has("delta_ratio")) {
                 lacks("delta_ratio", result_.lacking["anion_gap_corrected"]);
@@ -192,16 +213,20 @@ class Derivation {
         } else if (!is_computed("anion_gap_corrected")) {
             compute(
                 "delta_ratio", {"anion_gap_corrected", "serum_bicarbonate"},
-                [of](const Values& x) { return of(x[0], x[1]); }, domain);
+                [](Values x, Context c) { return delta(x[0], x[1], c.settings); }, domain);
         } else if (!is_computed("anion_gap")) {
             compute(
                 "delta_ratio", {"anion_gap", "serum_albumin", "serum_bicarbonate"},
-                [of, corrected](const Values& x) { return of(corrected(x[0], x[1]), x[2]); }, domain);
+                [](Values x, Context c) {
+                    return delta(corrected(x[0], x[1], c.settings), x[2], c.settings);
+                },
+                domain);
         } else {
             compute(
                 "delta_ratio", {"serum_sodium", "serum_chloride", "serum_bicarbonate", "serum_albumin"},
-                [of, corrected](const Values& x) {
-                    return of(corrected(chemistry::anion_gap(x[0], x[1], x[2]), x[3]), x[2]);
+                [](Values x, Context c) {
+                    const double gap = chemistry::anion_gap(x[0], x[1], x[2]);
+                    return delta(corrected(gap, x[3], c.settings), x[2], c.settings);
                 },
                 domain);
         }
@@ -222,34 +247,32 @@ class Derivation {
             lacks("gfr", std::move(absent));
             return;
         }
-        const double age = *panel_.age;
-        const bool female = panel_.sex == Sex::female;
         compute(
             "gfr", {"serum_creatinine"},
-            [age, female](const Values& x) {
-                return chemistry::ckd_epi_2021(x[0] * umol_l_to_mg_dl, age, female);
+            [](Values x, Context c) {
+                return chemistry::ckd_epi_2021(x[0] * umol_l_to_mg_dl, c.age, c.female);
             },
             "an age of at least 18 years: the equation is for adults");
     }
 
     void urine_gaps() {
         compute("urine_anion_gap", {"urine_sodium", "urine_potassium", "urine_chloride"},
-                [](const Values& x) { return chemistry::urine_anion_gap(x[0], x[1], x[2]); });
+                [](Values x, Context) { return chemistry::urine_anion_gap(x[0], x[1], x[2]); });
         osmolal_gap();
         if (has("urine_osmolal_gap")) {
             compute("urine_ammonium_estimate", {"urine_osmolal_gap"},
-                    [](const Values& x) { return chemistry::ammonium_from_osmolal_gap(x[0]); });
+                    [](Values x, Context) { return chemistry::ammonium_from_osmolal_gap(x[0]); });
         } else {
             compute(
                 "urine_ammonium_estimate", {"urine_anion_gap"},
-                [](const Values& x) { return chemistry::ammonium_from_anion_gap(x[0]); }, {},
+                [](Values x, Context) { return chemistry::ammonium_from_anion_gap(x[0]); }, {},
                 "ammonium estimated from the urine anion gap, not from the osmolal gap");
         }
         compute(
             "urine_sodium_chloride_ratio", {"urine_sodium", "urine_chloride"},
-            [](const Values& x) { return chemistry::ratio(x[0], x[1]); }, "a urine chloride above 0");
+            [](Values x, Context) { return chemistry::ratio(x[0], x[1]); }, "a urine chloride above 0");
         compute("urine_bicarbonate_estimate", {"urine_ph", "urine_pco2", "urine_sodium", "urine_potassium"},
-                [](const Values& x) { return chemistry::urine_bicarbonate(x[0], x[1], x[2], x[3]); });
+                [](Values x, Context) { return chemistry::urine_bicarbonate(x[0], x[1], x[2], x[3]); });
     }
 
     /// Urine glucose belongs in the gap whenever there is any. Where it was not measured the gap is computed
@@ -258,7 +281,7 @@ class Derivation {
         Ids inputs{"urine_osmolality", "urine_sodium", "urine_potassium", "urine_urea"};
         if (has("urine_glucose")) {
             inputs.emplace_back("urine_glucose");
-            compute("urine_osmolal_gap", inputs, [](const Values& x) {
+            compute("urine_osmolal_gap", inputs, [](Values x, Context) {
                 return chemistry::urine_osmolal_gap(x[0], x[1], x[2], x[3], x[4]);
             });
             return;
@@ -274,14 +297,14 @@ class Derivation {
         }
         compute(
             "urine_osmolal_gap", inputs,
-            [](const Values& x) { return chemistry::urine_osmolal_gap(x[0], x[1], x[2], x[3], 0.0); }, {},
+            [](Values x, Context) { return chemistry::urine_osmolal_gap(x[0], x[1], x[2], x[3], 0.0); }, {},
             "urine glucose was not given and is left out: with glycosuria the gap reads too high");
     }
 
     void fractional_excretion(std::string_view id, std::string_view urine, std::string_view serum) {
         compute(
             id, {urine, serum, "urine_creatinine", "serum_creatinine"},
-            [](const Values& x) {
+            [](Values x, Context) {
                 return chemistry::fractional_excretion(x[0], x[1], x[2], x[3] * umol_to_mmol);
             },
             "a serum value above 0");
@@ -301,9 +324,9 @@ class Derivation {
             "ttkg",
             {"urine_potassium", "serum_potassium", "urine_osmolality",
              osmolality_estimated ? "serum_osmolality_estimate" : "serum_osmolality"},
-            [](const Values& x) { return chemistry::ttkg(x[0], x[1], x[2], x[3]); }, {},
+            [](Values x, Context) { return chemistry::ttkg(x[0], x[1], x[2], x[3]); }, {},
             osmolality_estimated ? "serum osmolality was calculated, not measured" : "");
-        const Formula ratio = [](const Values& x) { return chemistry::ratio(x[0], x[1]); };
+        const PointFormula ratio = [](Values x, Context) { return chemistry::ratio(x[0], x[1]); };
         compute("urine_potassium_creatinine", {"urine_potassium", "urine_creatinine"}, ratio);
         compute("urine_calcium_creatinine", {"urine_calcium", "urine_creatinine"}, ratio);
     }
@@ -314,15 +337,15 @@ class Derivation {
         const Ids inputs{"urine_phosphate", "serum_phosphate", "urine_creatinine", "serum_creatinine"};
         compute(
             "tmp_gfr", inputs,
-            [](const Values& x) { return chemistry::tmp_gfr(x[0], x[1], x[2], x[3] * umol_to_mmol); },
+            [](Values x, Context) { return chemistry::tmp_gfr(x[0], x[1], x[2], x[3] * umol_to_mmol); },
             "a phosphate excretion below the filtered load");
         const auto found = result_.known.find("tmp_gfr");
-        if (found == result_.known.end() || found->second.origin != Origin::computed) {
+        if (steps_ != nullptr || found == result_.known.end() || found->second.origin != Origin::computed) {
             return;
         }
         Interval& value = found->second.value;
         const std::vector<Interval> box = box_of(inputs);
-        const std::optional<Interval> reabsorbed = image_of_box(box, [](const Values& x) {
+        const std::optional<Interval> reabsorbed = image_of_box(box, [](const std::vector<double>& x) {
             return chemistry::phosphate_reabsorption(x[0], x[1], x[2], x[3] * umol_to_mmol);
         });
         constexpr double step = chemistry::reabsorption_step;
@@ -343,7 +366,8 @@ class Derivation {
     }
 
     const Panel& panel_;
-    const ChemistrySettings& settings_;
+    FormulaContext context_;
+    std::vector<DerivationStep>* steps_;
     Quantities result_;
 };
 
@@ -356,6 +380,11 @@ const QuantityValue* Quantities::find(std::string_view id) const noexcept {
 
 Quantities derive(const Panel& panel, const ChemistrySettings& settings) {
     return Derivation(panel, settings).run();
+}
+
+Quantities detail::steps_to_derive(const Panel& panel, const ChemistrySettings& settings,
+                                   std::vector<DerivationStep>& steps) {
+    return Derivation(panel, settings, &steps).run();
 }
 
 }  // namespace steelyard::likelihoods

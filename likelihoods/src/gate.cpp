@@ -12,7 +12,7 @@
 #include <cmath>
 #include <utility>
 
-#include "known_quantity.hpp"
+#include "gate_facts.hpp"
 #include "steelyard/likelihoods/chemistry.hpp"
 #include "steelyard/likelihoods/interval_words.hpp"
 #include "wording.hpp"
@@ -21,6 +21,7 @@ namespace steelyard::likelihoods {
 namespace {
 
 using detail::Answer;
+using detail::GateFacts;
 using detail::Known;
 
 /// Middle of the normal range of arterial pH: compensation of one disorder does not carry pH past it. Basis:
@@ -67,76 +68,78 @@ std::string ph(double value) {
 
 class Examination {
   public:
-    Examination(const Panel& panel, const Quantities& quantities, const GateSettings& settings)
-        : panel_(panel),
-          quantities_(quantities),
+    /// @param in_words  whether the reasons are wanted, or only the status
+    Examination(const GateFacts& facts, const GateSettings& settings, bool in_words)
+        : facts_(facts),
           settings_(settings),
-          bicarbonate_(quantities, "serum_bicarbonate"),
-          ph_(quantities, "arterial_ph"),
-          pco2_(quantities, "arterial_pco2"),
-          venous_ph_(quantities, "venous_ph"),
-          expected_pco2_(quantities, "expected_pco2"),
-          gfr_(quantities, "gfr"),
-          gap_(quantities, "anion_gap"),
-          corrected_(quantities, "anion_gap_corrected"),
-          gfr_barred_(why_gfr_is_barred()) {}
+          in_words_(in_words),
+          bicarbonate_(facts.serum_bicarbonate),
+          ph_(facts.arterial_ph),
+          pco2_(facts.arterial_pco2),
+          venous_ph_(facts.venous_ph),
+          expected_pco2_(facts.expected_pco2),
+          gfr_(facts.gfr),
+          gap_(facts.anion_gap),
+          corrected_(facts.anion_gap_corrected) {}
 
-    GateResult run() && {
+    GateStatus run() {
         patient();
         gas_consistency();
         acidosis();
         gap();
-        GateResult result;
+        return status_;
+    }
+
+    /// In words, the gravest first.
+    std::vector<std::string> reasons() && {
         std::stable_sort(reasons_.begin(), reasons_.end(),
                          [](const auto& a, const auto& b) { return a.first > b.first; });
-        for (auto& [status, words] : reasons_) {
-            result.status = std::max(result.status, status);
-            result.reasons.push_back(std::move(words));
+        std::vector<std::string> words;
+        for (auto& [status, sentence] : reasons_) {
+            words.push_back(std::move(sentence));
         }
-        for (const std::string_view id :
-             {"anion_gap", "anion_gap_corrected", "expected_pco2", "delta_ratio", "bicarbonate_from_gas"}) {
-            if (const Known known(quantities_, id); known.is_point()) {
-                result.quantities.emplace_back(id, known.point());
-            }
-        }
-        return result;
+        return words;
     }
 
   private:
-    void say(GateStatus status, std::string words) { reasons_.emplace_back(status, std::move(words)); }
-
-    bool is_present(const std::string& feature) const {
-        const auto seen = panel_.observed.find(feature);
-        return !feature.empty() && seen != panel_.observed.end() && seen->second.level == "present";
+    /// @param words  called only when the reason is wanted
+    template <class Words>
+    void say(GateStatus status, const Words& words) {
+        status_ = std::max(status_, status);
+        if (in_words_) {
+            reasons_.emplace_back(status, words());
+        }
     }
 
     void patient() {
         const double least = settings_.age_least.value;
-        if (!panel_.age) {
-            say(GateStatus::in_scope, "age was not given: the tables are for adults");
-        } else if (*panel_.age < least) {
-            say(GateStatus::out_of_scope,
-                fmt::format("age {}{} is below {}{}: the tables are for adults",
-                            detail::decimal_beside(*panel_.age, least, {0, 1}),
-                            detail::unit_after_number("a"), detail::decimal(least, {0, 1}),
-                            detail::unit_after_number("a")));
+        if (!facts_.age) {
+            say(GateStatus::in_scope, [&] { return "age was not given: the tables are for adults"; });
+        } else if (*facts_.age < least) {
+            say(GateStatus::out_of_scope, [&] {
+                return fmt::format("age {}{} is below {}{}: the tables are for adults",
+                                   detail::decimal_beside(*facts_.age, least, {0, 1}),
+                                   detail::unit_after_number("a"), detail::decimal(least, {0, 1}),
+                                   detail::unit_after_number("a"));
+            });
         }
-        if (is_present(settings_.pregnancy_feature)) {
-            say(GateStatus::caution,
-                "pregnancy lowers bicarbonate by hyperventilation; the tables do not speak of it");
+        if (facts_.pregnant) {
+            say(GateStatus::caution, [&] {
+                return "pregnancy lowers bicarbonate by hyperventilation; the tables do not speak of it";
+            });
         }
     }
 
     /// Bicarbonate with, where it was not measured as such, what it was taken from.
     std::string bicarbonate_words() const {
         std::string words = bicarbonate_.words_beside(settings_.bicarbonate_low.value);
-        const QuantityValue& quantity = bicarbonate_.quantity();
-        if (quantity.origin != Origin::computed || quantity.from.empty()) {
+        if (bicarbonate_.origin() != Origin::computed || facts_.bicarbonate_taken_from.empty()) {
             return words;
         }
-        const std::string& from = quantity.from.front();
-        if (const Known total(quantities_, "serum_total_co2"); from == "serum_total_co2" && total) {
-            return fmt::format("{} (total CO2 {} less {})", words, interval_in_words(total.value(), 3),
+        const std::string_view from = facts_.bicarbonate_taken_from;
+        if (from == "serum_total_co2" && facts_.serum_total_co2) {
+            return fmt::format("{} (total CO2 {} less {})", words,
+                               interval_in_words(facts_.serum_total_co2.value(), 3),
                                detail::decimal(chemistry::dissolved_co2, {0, 1}));
         }
         const std::string_view vessel = from.starts_with("venous") ? "venous" : "arterial";
@@ -148,23 +151,27 @@ class Examination {
     void acidosis() {
         const double limit = settings_.bicarbonate_low.value;
         if (!bicarbonate_) {
-            say(GateStatus::caution, "acidosis could not be confirmed: no bicarbonate was given");
+            say(GateStatus::caution,
+                [&] { return "acidosis could not be confirmed: no bicarbonate was given"; });
             return;
         }
         switch (bicarbonate_.below(limit)) {
             case Answer::yes:
-                say(GateStatus::in_scope,
-                    fmt::format("bicarbonate {} is below {}", bicarbonate_words(), mmol(limit)));
+                say(GateStatus::in_scope, [&] {
+                    return fmt::format("bicarbonate {} is below {}", bicarbonate_words(), mmol(limit));
+                });
                 compensation();
                 return;
             case Answer::no:
                 bicarbonate_not_low();
                 return;
             case Answer::unknown:
-                say(GateStatus::caution,
-                    fmt::format("acidosis could not be confirmed: bicarbonate is {}, on either "
-                                "side of {}",
-                                bicarbonate_words(), mmol(limit)));
+                say(GateStatus::caution, [&] {
+                    return fmt::format(
+                        "acidosis could not be confirmed: bicarbonate is {}, on either "
+                        "side of {}",
+                        bicarbonate_words(), mmol(limit));
+                });
                 return;
         }
     }
@@ -176,25 +183,31 @@ class Examination {
         const double acidaemia = settings_.ph_low.value;
         const double hypercapnia = settings_.pco2_high.value;
         if (ph_.below(acidaemia) == Answer::yes) {
-            const std::string finding =
-                fmt::format("arterial pH {} is below {} while bicarbonate {} is not below {}",
-                            ph_.words_beside(acidaemia), ph(acidaemia), bicarbonate_words(), mmol(limit));
+            const auto finding = [&] {
+                return fmt::format("arterial pH {} is below {} while bicarbonate {} is not below {}",
+                                   ph_.words_beside(acidaemia), ph(acidaemia), bicarbonate_words(),
+                                   mmol(limit));
+            };
             if (pco2_.above(hypercapnia) == Answer::yes && gas_agrees_) {
-                say(GateStatus::out_of_scope,
-                    fmt::format("respiratory acidosis: {} and pCO2 {} is above {}", finding,
-                                pco2_.words_beside(hypercapnia), mm_hg(hypercapnia)));
+                say(GateStatus::out_of_scope, [&] {
+                    return fmt::format("respiratory acidosis: {} and pCO2 {} is above {}", finding(),
+                                       pco2_.words_beside(hypercapnia), mm_hg(hypercapnia));
+                });
             } else {
-                say(GateStatus::caution, finding + ": a mild, treated or mixed disorder");
+                say(GateStatus::caution, [&] { return finding() + ": a mild, treated or mixed disorder"; });
             }
-        } else if (is_present(settings_.alkali_feature)) {
-            say(GateStatus::caution,
-                fmt::format(
+        } else if (facts_.given_alkali) {
+            say(GateStatus::caution, [&] {
+                return fmt::format(
                     "bicarbonate is not low while alkali is given ({}, limit {}); the panel is read as a "
                     "treated acidosis",
-                    bicarbonate_words(), mmol(limit)));
+                    bicarbonate_words(), mmol(limit));
+            });
         } else {
-            say(GateStatus::out_of_scope, fmt::format("no metabolic acidosis: bicarbonate {} is not below {}",
-                                                      bicarbonate_words(), mmol(limit)));
+            say(GateStatus::out_of_scope, [&] {
+                return fmt::format("no metabolic acidosis: bicarbonate {} is not below {}",
+                                   bicarbonate_words(), mmol(limit));
+            });
         }
     }
 
@@ -211,21 +224,24 @@ class Examination {
         }
         const double alkalaemia = settings_.ph_high.value;
         if (ph_.above(alkalaemia) == Answer::yes) {
-            say(GateStatus::out_of_scope,
-                fmt::format(
+            say(GateStatus::out_of_scope, [&] {
+                return fmt::format(
                     "primary respiratory alkalosis: bicarbonate is low while arterial pH {} is above {}",
-                    ph_.words_beside(alkalaemia), ph(alkalaemia)));
+                    ph_.words_beside(alkalaemia), ph(alkalaemia));
+            });
             return;
         }
         const double acidaemia = settings_.ph_low.value;
         const Answer acidaemic = ph_.below(acidaemia);
         if (acidaemic == Answer::yes) {
-            say(GateStatus::in_scope,
-                fmt::format("arterial pH {} is below {}", ph_.words_beside(acidaemia), ph(acidaemia)));
+            say(GateStatus::in_scope, [&] {
+                return fmt::format("arterial pH {} is below {}", ph_.words_beside(acidaemia), ph(acidaemia));
+            });
         } else if (acidaemic == Answer::no) {
-            say(GateStatus::in_scope,
-                fmt::format("arterial pH {} is not below {}: the acidosis is compensated or mixed",
-                            ph_.words_beside(acidaemia), ph(acidaemia)));
+            say(GateStatus::in_scope, [&] {
+                return fmt::format("arterial pH {} is not below {}: the acidosis is compensated or mixed",
+                                   ph_.words_beside(acidaemia), ph(acidaemia));
+            });
         }
         if (pco2_ && expected_pco2_) {
             breathing();
@@ -236,25 +252,32 @@ class Examination {
         const double band = settings_.expected_pco2_band.value;
         const double highest = expected_pco2_.value().high + band;
         const double lowest = expected_pco2_.value().low - band;
-        const std::string expected =
-            fmt::format("the expected {} (within {})", expected_pco2_.words(), mm_hg(band));
+        const auto expected = [&] {
+            return fmt::format("the expected {} (within {})", expected_pco2_.words(), mm_hg(band));
+        };
         if (pco2_.above(highest) == Answer::yes) {
-            say(GateStatus::caution, fmt::format("added respiratory acidosis: pCO2 {} is above {}",
-                                                 pco2_.words_beside(highest), expected));
+            say(GateStatus::caution, [&] {
+                return fmt::format("added respiratory acidosis: pCO2 {} is above {}",
+                                   pco2_.words_beside(highest), expected());
+            });
         } else if (pco2_.below(lowest) == Answer::yes) {
-            const std::string measured = fmt::format("pCO2 {} is", pco2_.words_beside(lowest));
+            const auto measured = [&] { return fmt::format("pCO2 {} is", pco2_.words_beside(lowest)); };
             if (ph_.below(middle_ph) == Answer::no) {
-                say(GateStatus::out_of_scope,
-                    fmt::format(
+                say(GateStatus::out_of_scope, [&] {
+                    return fmt::format(
                         "primary respiratory alkalosis: {} below {} and arterial pH {} is not below {}",
-                        measured, expected, ph_.words_beside(middle_ph), ph(middle_ph)));
+                        measured(), expected(), ph_.words_beside(middle_ph), ph(middle_ph));
+                });
             } else {
-                say(GateStatus::caution, fmt::format("{} respiratory alkalosis: {} below {}",
-                                                     ph_ ? "added" : "added or primary", measured, expected));
+                say(GateStatus::caution, [&] {
+                    return fmt::format("{} respiratory alkalosis: {} below {}",
+                                       ph_ ? "added" : "added or primary", measured(), expected());
+                });
             }
         } else if (pco2_.is_point() && expected_pco2_.is_point()) {
-            say(GateStatus::in_scope,
-                fmt::format("pCO2 {} is as expected, {}", pco2_.words(), expected.substr(4)));
+            say(GateStatus::in_scope, [&] {
+                return fmt::format("pCO2 {} is as expected, {}", pco2_.words(), expected().substr(4));
+            });
         }
     }
 
@@ -263,29 +286,35 @@ class Examination {
     /// breathing.
     void without_arterial_gas() {
         if (!venous_ph_) {
-            say(GateStatus::in_scope,
-                "no arterial gas was given: a respiratory alkalosis, which also lowers bicarbonate, is not "
-                "excluded");
+            say(GateStatus::in_scope, [&] {
+                return "no arterial gas was given: a respiratory alkalosis, which also lowers bicarbonate, "
+                       "is not "
+                       "excluded";
+            });
             return;
         }
         const double acidaemia = settings_.ph_low.value;
         const double alkalaemia = settings_.ph_high.value;
         const std::string_view limits = "breathing cannot be judged from a venous gas";
         if (venous_ph_.below(acidaemia) == Answer::yes) {
-            say(GateStatus::in_scope,
-                fmt::format("venous pH {} speaks against a primary respiratory alkalosis; {}",
-                            venous_ph_.words(), limits));
+            say(GateStatus::in_scope, [&] {
+                return fmt::format("venous pH {} speaks against a primary respiratory alkalosis; {}",
+                                   venous_ph_.words(), limits);
+            });
         } else if (venous_ph_.above(alkalaemia) == Answer::yes) {
-            say(GateStatus::caution,
-                fmt::format(
+            say(GateStatus::caution, [&] {
+                return fmt::format(
                     "venous pH {} is above {}, and arterial pH lies a little higher still: think of a "
                     "primary respiratory alkalosis; {}",
-                    venous_ph_.words_beside(alkalaemia), ph(alkalaemia), limits));
+                    venous_ph_.words_beside(alkalaemia), ph(alkalaemia), limits);
+            });
         } else {
-            say(GateStatus::in_scope,
-                fmt::format("venous pH {} does not exclude a respiratory alkalosis, which also lowers "
-                            "bicarbonate; {}",
-                            venous_ph_.words(), limits));
+            say(GateStatus::in_scope, [&] {
+                return fmt::format(
+                    "venous pH {} does not exclude a respiratory alkalosis, which also lowers "
+                    "bicarbonate; {}",
+                    venous_ph_.words(), limits);
+            });
         }
     }
 
@@ -296,17 +325,15 @@ class Examination {
         if (!ph_.is_point() || !pco2_.is_point()) {
             return;
         }
-        for (const std::string_view id : {"arterial_bicarbonate", "serum_bicarbonate"}) {
-            const Known bicarbonate(quantities_, id);
-            if (!bicarbonate.is_point()) {
+        for (const Known* bicarbonate : {&facts_.arterial_bicarbonate, &facts_.serum_bicarbonate}) {
+            if (!bicarbonate->is_point()) {
                 continue;
             }
-            const bool measured = bicarbonate.quantity().origin == Origin::measured;
-            const auto& from = bicarbonate.quantity().from;
-            const bool from_total_co2 = std::find(from.begin(), from.end(), "serum_total_co2") != from.end();
-            if (measured || from_total_co2) {
-                compare_gas(id == "arterial_bicarbonate" ? "arterial bicarbonate" : "serum bicarbonate",
-                            bicarbonate);
+            if (bicarbonate->origin() == Origin::measured ||
+                (bicarbonate == &facts_.serum_bicarbonate && facts_.bicarbonate_from_total_co2)) {
+                compare_gas(bicarbonate == &facts_.arterial_bicarbonate ? "arterial bicarbonate"
+                                                                        : "serum bicarbonate",
+                            *bicarbonate);
             }
         }
     }
@@ -327,12 +354,14 @@ class Examination {
         }
         gas_agrees_ = false;
         const bool gross = both_exceed(2.0);
-        say(gross ? GateStatus::out_of_scope : GateStatus::caution,
-            fmt::format("the blood gas {}: pH {} and pCO2 {} give a bicarbonate of {}, but {} is {} "
-                        "(tolerated: {} and pH {}); check the transcription or repeat the gas",
-                        gross ? "contradicts itself" : "does not quite agree", ph_.words(), pco2_.words(),
-                        detail::decimal(implied, {0, 1}) + " mmol/L", what, bicarbonate.words(),
-                        mmol(settings_.gas_bicarbonate.value), ph(settings_.gas_ph.value)));
+        say(gross ? GateStatus::out_of_scope : GateStatus::caution, [&] {
+            return fmt::format(
+                "the blood gas {}: pH {} and pCO2 {} give a bicarbonate of {}, but {} is {} "
+                "(tolerated: {} and pH {}); check the transcription or repeat the gas",
+                gross ? "contradicts itself" : "does not quite agree", ph_.words(), pco2_.words(),
+                detail::decimal(implied, {0, 1}) + " mmol/L", what, bicarbonate.words(),
+                mmol(settings_.gas_bicarbonate.value), ph(settings_.gas_ph.value));
+        });
     }
 
     void gap() {
@@ -342,12 +371,14 @@ class Examination {
         } else if (gap_) {
             high = uncorrected_gap();
         } else {
-            say(GateStatus::caution,
-                "the anion gap is not known (sodium, chloride and bicarbonate are needed): a normal gap was "
-                "not confirmed");
+            say(GateStatus::caution, [&] {
+                return "the anion gap is not known (sodium, chloride and bicarbonate are needed): a normal "
+                       "gap was "
+                       "not confirmed";
+            });
         }
-        measured_acid("serum_lactate", "lactate", settings_.lactate_high.value, "lactic acidosis", high);
-        measured_acid("serum_beta_hydroxybutyrate", "beta-hydroxybutyrate", settings_.ketones_high.value,
+        measured_acid(facts_.serum_lactate, "lactate", settings_.lactate_high.value, "lactic acidosis", high);
+        measured_acid(facts_.serum_beta_hydroxybutyrate, "beta-hydroxybutyrate", settings_.ketones_high.value,
                       "ketoacidosis", high);
         if (corrected_ || gap_) {
             delta_ratio();
@@ -356,8 +387,8 @@ class Examination {
 
     /// A ratio is judged as it is shown, to two decimals.
     void delta_ratio() {
-        const Known ratio(quantities_, "delta_ratio");
-        if (!ratio.is_point()) {
+        const Known& ratio = facts_.delta_ratio;
+        if (!in_words_ || !ratio.is_point()) {
             return;
         }
         const double shown = std::round(100.0 * ratio.point()) / 100.0;
@@ -370,65 +401,55 @@ class Examination {
             meaning = fmt::format("the rise of the gap accounts for {:.0f} % of the fall in bicarbonate",
                                   100.0 * ratio.point());
         }
-        say(GateStatus::in_scope, fmt::format("delta ratio {}: {}", ratio.words(), meaning));
+        say(GateStatus::in_scope, [&] { return fmt::format("delta ratio {}: {}", ratio.words(), meaning); });
     }
 
     /// An unmeasured acid that was measured after all. With a high gap it is the answer, and not one of the
     /// tables'.
-    void measured_acid(std::string_view id, std::string_view name, double limit, std::string_view disorder,
+    void measured_acid(const Known& acid, std::string_view name, double limit, std::string_view disorder,
                        Answer gap_is_high) {
-        const Known acid(quantities_, id);
         const Answer above = acid.above(limit);
         if (!acid || above == Answer::no) {
             return;
         }
-        const std::string finding = fmt::format("{} {} {} above {}", name, acid.words_beside(limit),
-                                                above == Answer::yes ? "is" : "may be", mmol(limit));
+        const auto finding = [&] {
+            return fmt::format("{} {} {} above {}", name, acid.words_beside(limit),
+                               above == Answer::yes ? "is" : "may be", mmol(limit));
+        };
         if (above == Answer::yes && gap_is_high == Answer::yes) {
-            say(GateStatus::out_of_scope,
-                fmt::format("{}: a {}, which these tables do not weigh", finding, disorder));
+            say(GateStatus::out_of_scope, [&] {
+                return fmt::format("{}: a {}, which these tables do not weigh", finding(), disorder);
+            });
         } else if (gap_is_high == Answer::no) {
-            say(GateStatus::caution,
-                fmt::format("{} though the gap is not high: a {} beside it is not excluded", finding,
-                            disorder));
+            say(GateStatus::caution, [&] {
+                return fmt::format("{} though the gap is not high: a {} beside it is not excluded", finding(),
+                                   disorder);
+            });
         } else {
-            say(GateStatus::caution, fmt::format("{}: a {} is not excluded", finding, disorder));
+            say(GateStatus::caution,
+                [&] { return fmt::format("{}: a {} is not excluded", finding(), disorder); });
         }
     }
 
     /// `lactate, ketones and toxins`, without those that were measured and are not raised.
     std::string acids_to_exclude() const {
         std::vector<std::string> acids;
-        if (Known(quantities_, "serum_lactate").above(settings_.lactate_high.value) != Answer::no) {
+        if (facts_.serum_lactate.above(settings_.lactate_high.value) != Answer::no) {
             acids.emplace_back("lactate");
         }
-        if (Known(quantities_, "serum_beta_hydroxybutyrate").above(settings_.ketones_high.value) !=
-            Answer::no) {
+        if (facts_.serum_beta_hydroxybutyrate.above(settings_.ketones_high.value) != Answer::no) {
             acids.emplace_back("ketones");
         }
         acids.emplace_back("toxins");
         return detail::listed_in_words(acids);
     }
 
-    /// Why the GFR of this case is not valid; empty when it is.
-    std::string why_gfr_is_barred() const {
-        for (const GfrCondition& condition : settings_.gfr_conditions) {
-            const auto seen = panel_.observed.find(condition.feature);
-            const bool barred = seen == panel_.observed.end() ? condition.set_aside_when_unknown
-                                                              : seen->second.level != condition.level;
-            if (barred) {
-                return condition.otherwise;
-            }
-        }
-        return {};
-    }
-
     Answer gfr_is_reduced() const {
-        return gfr_barred_.empty() ? gfr_.below(settings_.gfr_reduced_below.value) : Answer::unknown;
+        return facts_.gfr_barred == nullptr ? gfr_.below(settings_.gfr_reduced_below.value) : Answer::unknown;
     }
 
     std::string gfr_words() const {
-        const bool estimated = gfr_.quantity().origin == Origin::computed;
+        const bool estimated = gfr_.origin() == Origin::computed;
         return fmt::format("GFR {}{}", gfr_.words_beside(settings_.gfr_reduced_below.value),
                            estimated ? " (estimated from creatinine)" : "");
     }
@@ -443,8 +464,8 @@ class Examination {
         if (!gfr_) {
             return "GFR is not known";
         }
-        if (!gfr_barred_.empty()) {
-            return fmt::format("{} is not used ({})", gfr_words(), gfr_barred_);
+        if (facts_.gfr_barred != nullptr) {
+            return fmt::format("{} is not used ({})", gfr_words(), *facts_.gfr_barred);
         }
         return fmt::format("{} is on either side of {}", gfr_words(),
                            gfr_.limit_words(settings_.gfr_reduced_below.value));
@@ -458,52 +479,63 @@ class Examination {
             return fmt::format("anion gap corrected for albumin {}", corrected_.words_beside(limit));
         };
         if (corrected_.below(low_gap) == Answer::yes) {
-            remark_low_gap(what(low_gap), "lithium");
+            remark_low_gap([&] { return what(low_gap); }, "lithium");
         } else if (corrected_.above(normal_to) == Answer::no) {
             say(GateStatus::in_scope,
-                fmt::format("{} is normal, not above {}", what(normal_to), mmol(normal_to)));
+                [&] { return fmt::format("{} is normal, not above {}", what(normal_to), mmol(normal_to)); });
         } else if (corrected_.above(high_from) == Answer::yes) {
-            high_gap(fmt::format("{} is above {}", what(high_from), mmol(high_from)));
+            high_gap([&] { return fmt::format("{} is above {}", what(high_from), mmol(high_from)); });
         } else {
-            const std::string finding = fmt::format("{} is above {} but not clearly above {}",
-                                                    what(normal_to), mmol(normal_to), mmol(high_from));
-            between_limits(
-                corrected_.above(normal_to) == Answer::yes
-                    ? finding
-                    : fmt::format("{} lies on either side of {}", what(normal_to),
-                                  mmol(corrected_.above(high_from) == Answer::no ? normal_to : high_from)));
+            between_limits([&] {
+                return corrected_.above(normal_to) == Answer::yes
+                           ? fmt::format("{} is above {} but not clearly above {}", what(normal_to),
+                                         mmol(normal_to), mmol(high_from))
+                           : fmt::format(
+                                 "{} lies on either side of {}", what(normal_to),
+                                 mmol(corrected_.above(high_from) == Answer::no ? normal_to : high_from));
+            });
         }
         return corrected_.above(high_from);
     }
 
-    void between_limits(const std::string& finding) {
+    template <class Words>
+    void between_limits(const Words& finding) {
         if (gfr_is_reduced() == Answer::yes) {
-            say(GateStatus::in_scope,
-                fmt::format("{}; {}, which may account for it", finding, reduced_gfr_words()));
+            say(GateStatus::in_scope, [&] {
+                return fmt::format("{}; {}, which may account for it", finding(), reduced_gfr_words());
+            });
         } else if (gfr_is_reduced() == Answer::unknown && gfr_) {
-            say(GateStatus::caution,
-                fmt::format("{}: a normal gap was not confirmed, and {}", finding, unknown_gfr_words()));
+            say(GateStatus::caution, [&] {
+                return fmt::format("{}: a normal gap was not confirmed, and {}", finding(),
+                                   unknown_gfr_words());
+            });
         } else {
-            say(GateStatus::caution, finding + ": a normal gap was not confirmed");
+            say(GateStatus::caution, [&] { return finding() + ": a normal gap was not confirmed"; });
         }
     }
 
-    void high_gap(const std::string& finding) {
+    template <class Words>
+    void high_gap(const Words& finding) {
         switch (gfr_is_reduced()) {
             case Answer::yes:
-                say(GateStatus::caution,
-                    fmt::format("{}; {}: renal failure is among the causes, but {} must be excluded", finding,
-                                reduced_gfr_words(), acids_to_exclude()));
+                say(GateStatus::caution, [&] {
+                    return fmt::format("{}; {}: renal failure is among the causes, but {} must be excluded",
+                                       finding(), reduced_gfr_words(), acids_to_exclude());
+                });
                 return;
             case Answer::no:
-                say(GateStatus::out_of_scope,
-                    fmt::format("{} and {} is not reduced: a high-gap acidosis (lactate, ketones, toxins), "
-                                "which these tables do not weigh",
-                                finding, gfr_words()));
+                say(GateStatus::out_of_scope, [&] {
+                    return fmt::format(
+                        "{} and {} is not reduced: a high-gap acidosis (lactate, ketones, toxins), "
+                        "which these tables do not weigh",
+                        finding(), gfr_words());
+                });
                 return;
             case Answer::unknown:
-                say(GateStatus::caution, fmt::format("{} and {}: {} must be excluded", finding,
-                                                     unknown_gfr_words(), acids_to_exclude()));
+                say(GateStatus::caution, [&] {
+                    return fmt::format("{} and {}: {} must be excluded", finding(), unknown_gfr_words(),
+                                       acids_to_exclude());
+                });
                 return;
         }
     }
@@ -519,43 +551,48 @@ class Examination {
                                gap_.words_beside(limit));
         };
         if (gap_.below(low_gap) == Answer::yes) {
-            remark_low_gap(what(low_gap), "a low albumin, lithium");
+            remark_low_gap([&] { return what(low_gap); }, "a low albumin, lithium");
             return Answer::no;
         }
         if (gap_.above(normal_to - doubt) == Answer::no) {
-            say(GateStatus::in_scope,
-                fmt::format("{} is normal, not above {}; it would be higher if albumin is low",
-                            what(normal_to), mmol(normal_to)));
+            say(GateStatus::in_scope, [&] {
+                return fmt::format("{} is normal, not above {}; it would be higher if albumin is low",
+                                   what(normal_to), mmol(normal_to));
+            });
             return Answer::no;
         }
         if (gap_.above(high_from + doubt) == Answer::yes) {
-            high_gap(fmt::format("{} is above {}", what(high_from), mmol(high_from)));
+            high_gap([&] { return fmt::format("{} is above {}", what(high_from), mmol(high_from)); });
             return Answer::yes;
         }
-        say(GateStatus::caution,
-            fmt::format("{} lies too near the limits ({} and {}) to be read without albumin", what(high_from),
-                        mmol(normal_to), mmol(high_from)));
+        say(GateStatus::caution, [&] {
+            return fmt::format("{} lies too near the limits ({} and {}) to be read without albumin",
+                               what(high_from), mmol(normal_to), mmol(high_from));
+        });
         return Answer::unknown;
     }
 
-    void remark_low_gap(const std::string& what, std::string_view first) {
-        say(GateStatus::caution,
-            fmt::format("{} is below {}: think of {}, bromide, a paraprotein, or an error of measurement",
-                        what, mmol(low_gap), first));
+    template <class Words>
+    void remark_low_gap(const Words& what, std::string_view first) {
+        say(GateStatus::caution, [&] {
+            return fmt::format(
+                "{} is below {}: think of {}, bromide, a paraprotein, or an error of measurement", what(),
+                mmol(low_gap), first);
+        });
     }
 
-    const Panel& panel_;
-    const Quantities& quantities_;
+    const GateFacts& facts_;
     const GateSettings& settings_;
-    Known bicarbonate_;
-    Known ph_;
-    Known pco2_;
-    Known venous_ph_;
-    Known expected_pco2_;
-    Known gfr_;
-    Known gap_;
-    Known corrected_;
-    std::string gfr_barred_;
+    bool in_words_;
+    const Known& bicarbonate_;
+    const Known& ph_;
+    const Known& pco2_;
+    const Known& venous_ph_;
+    const Known& expected_pco2_;
+    const Known& gfr_;
+    const Known& gap_;
+    const Known& corrected_;
+    GateStatus status_ = GateStatus::in_scope;
     bool gas_agrees_ = true;
     std::vector<std::pair<GateStatus, std::string>> reasons_;
 };
@@ -575,7 +612,22 @@ std::string_view to_string(GateStatus status) noexcept {
 }
 
 GateResult gate(const Panel& panel, const Quantities& quantities, const GateSettings& settings) {
-    return Examination(panel, quantities, settings).run();
+    const GateFacts facts = detail::gate_facts(panel, quantities, settings);
+    Examination examination(facts, settings, true);
+    GateResult result;
+    result.status = examination.run();
+    result.reasons = std::move(examination).reasons();
+    for (const std::string_view id :
+         {"anion_gap", "anion_gap_corrected", "expected_pco2", "delta_ratio", "bicarbonate_from_gas"}) {
+        if (const QuantityValue* known = quantities.find(id); known != nullptr && known->value.is_point()) {
+            result.quantities.emplace_back(id, known->value.low);
+        }
+    }
+    return result;
+}
+
+GateStatus detail::gate_status(const GateFacts& facts, const GateSettings& settings) {
+    return Examination(facts, settings, false).run();
 }
 
 std::vector<std::string> gate_inputs(const GateSettings& settings) {

@@ -26,22 +26,27 @@ Answer is_above(const Interval& value, double limit) {
 }
 
 std::string Known::words() const {
+    const Decimals decimals = decimals_of(id_);
     return interval_in_words(
-        quantity_->value, [this](double value) { return decimal(value, decimals_); },
-        unit_after_number(quantity_->unit));
+        value_, [decimals](double value) { return decimal(value, decimals); }, unit_in_words());
 }
 
 std::string Known::words_beside(double limit) const {
+    const Decimals decimals = decimals_of(id_);
     return interval_in_words(
-        quantity_->value, [this, limit](double value) { return decimal_beside(value, limit, decimals_); },
-        unit_after_number(quantity_->unit));
+        value_, [decimals, limit](double value) { return decimal_beside(value, limit, decimals); },
+        unit_in_words());
 }
 
 std::string Known::limit_words(double limit) const {
-    Decimals decimals = decimals_;
+    Decimals decimals = decimals_of(id_);
     decimals.most = std::max(decimals.most, decimals_needed(limit));
+    return decimal(limit, decimals) + unit_in_words();
+}
+
+std::string Known::unit_in_words() const {
     const QuantityKind* kind = find_quantity(id_);
-    return decimal(limit, decimals) + unit_after_number(kind != nullptr ? kind->unit : "");
+    return unit_after_number(kind != nullptr ? kind->unit : "");
 }
 
 }  // namespace steelyard::likelihoods::detail

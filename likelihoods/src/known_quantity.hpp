@@ -20,20 +20,24 @@ Answer is_above(const Interval& value, double limit);
 /// Every comparison with an unknown quantity is unknown.
 class Known {
   public:
-    Known(const Quantities& quantities, std::string_view id)
-        : id_(id), quantity_(quantities.find(id)), decimals_(decimals_of(id)) {}
+    /// Unknown.
+    explicit Known(std::string_view id) : id_(id) {}
+    Known(std::string_view id, const Interval& value, Origin origin)
+        : id_(id), value_(value), known_(true), origin_(origin) {}
+    Known(const Quantities& quantities, std::string_view id) : id_(id) {
+        if (const QuantityValue* quantity = quantities.find(id)) {
+            *this = Known(id, quantity->value, quantity->origin);
+        }
+    }
 
-    explicit operator bool() const { return quantity_ != nullptr; }
-    const Interval& value() const { return quantity_->value; }
-    const QuantityValue& quantity() const { return *quantity_; }
-    bool is_point() const { return quantity_ != nullptr && quantity_->value.is_point(); }
-    double point() const { return quantity_->value.low; }
-    Answer below(double limit) const {
-        return quantity_ != nullptr ? is_below(quantity_->value, limit) : Answer::unknown;
-    }
-    Answer above(double limit) const {
-        return quantity_ != nullptr ? is_above(quantity_->value, limit) : Answer::unknown;
-    }
+    std::string_view id() const { return id_; }
+    explicit operator bool() const { return known_; }
+    const Interval& value() const { return value_; }
+    Origin origin() const { return origin_; }
+    bool is_point() const { return known_ && value_.is_point(); }
+    double point() const { return value_.low; }
+    Answer below(double limit) const { return known_ ? is_below(value_, limit) : Answer::unknown; }
+    Answer above(double limit) const { return known_ ? is_above(value_, limit) : Answer::unknown; }
 
     /// `30 mmHg`, `below 22 mmol/L`.
     std::string words() const;
@@ -43,9 +47,12 @@ class Known {
     std::string limit_words(double limit) const;
 
   private:
+    std::string unit_in_words() const;
+
     std::string_view id_;
-    const QuantityValue* quantity_;
-    Decimals decimals_;
+    Interval value_;
+    bool known_ = false;
+    Origin origin_{};
 };
 
 }  // namespace steelyard::likelihoods::detail

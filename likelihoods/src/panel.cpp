@@ -239,7 +239,10 @@ std::string did_you_mean(std::string_view name, std::span<const std::string> kno
     return nearest.empty() ? std::string() : fmt::format("did you mean {}?", nearest);
 }
 
-constexpr double oldest = 130.0;  // [a], elicited
+Target age_target() {
+    constexpr double oldest = 130.0;  // [a], elicited
+    return {"age", false, *read_unit("a").unit, {}, 0.0, oldest, false};
+}
 
 }  // namespace
 
@@ -334,7 +337,7 @@ bool PanelBuilder::set_number(std::string_view flat_name, std::string_view text,
 }
 
 void PanelBuilder::set_age(std::string_view text, std::string_view unit_apart, const SourcePosition& where) {
-    const Target target{"age", false, *read_unit("a").unit, {}, 0.0, oldest, false};
+    const Target target = age_target();
     EntryText entry;
     detail::EntryFault fault;
     if (!detail::read_entry_text(text, entry, fault)) {
@@ -407,18 +410,35 @@ std::string_view method_of(const Panel& panel, std::string_view quantity) {
     return quantity == "urine_ph" ? std::string_view(panel.urine_ph_method) : std::string_view();
 }
 
-void PanelBuilder::unknown_name(std::string_view flat_name, std::string_view text,
-                                const SourcePosition& where) {
+bool names_a_number(std::string_view flat_name) noexcept {
+    return flat_name == "age" || find_target(flat_name).has_value();
+}
+
+std::optional<EntryScale> entry_scale(std::string_view flat_name, std::string_view unit,
+                                      const SourcePosition& where, Diagnostics& faults) {
+    const Target target = flat_name == "age" ? age_target() : *find_target(flat_name);
+    const std::optional<double> factor = read_factor(flat_name, detail::trimmed(unit), target, where, faults);
+    if (!factor) {
+        return std::nullopt;
+    }
+    return EntryScale{target.id, *factor, target.low, target.high};
+}
+
+std::string meant_by(std::string_view flat_name, const FeatureVocabulary& vocabulary, std::string_view text) {
     std::vector<std::string> features;
-    for (const auto& [id, levels] : vocabulary_.levels) {
+    for (const auto& [id, levels] : vocabulary.levels) {
         features.push_back(id);
     }
     const std::vector<std::string> quantities = quantity_names();
     const bool measured = looks_measured(flat_name, text);
     std::string hint = did_you_mean(flat_name, measured ? quantities : features);
-    if (hint.empty()) {
-        hint = did_you_mean(flat_name, measured ? features : quantities);
-    }
+    return hint.empty() ? did_you_mean(flat_name, measured ? features : quantities) : hint;
+}
+
+void PanelBuilder::unknown_name(std::string_view flat_name, std::string_view text,
+                                const SourcePosition& where) {
+    const bool measured = looks_measured(flat_name, text);
+    std::string hint = meant_by(flat_name, vocabulary_, text);
     if (measured) {
         faults_.add(where, Code::unknown_analyte,
                     fmt::format("{} is no quantity this program knows", flat_name), std::move(hint));

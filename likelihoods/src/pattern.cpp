@@ -300,6 +300,10 @@ Pattern reread(const TableSet& set, const Pattern& pattern, const std::vector<Re
     return changed;
 }
 
+Eigen::ArrayXd log_probability(const Eigen::Ref<const Eigen::ArrayXd>& seen) {
+    return seen.unaryExpr([](double p) { return std::log(std::min(p, 1.0)); });
+}
+
 Eigen::ArrayXXd log_likelihood_rows(const TableSet& set, const Pattern& pattern,
                                     const std::vector<std::string>& causes) {
     const auto read = std::count_if(pattern.findings.begin(), pattern.findings.end(),
@@ -315,8 +319,7 @@ Eigen::ArrayXXd log_likelihood_rows(const TableSet& set, const Pattern& pattern,
         for (const Eigen::Index cell : reading.cells) {
             seen += bands.row(cell).transpose();
         }
-        // A margin is a sum of probabilities and may pass 1 by a rounding; its logarithm must not be above 0.
-        rows.row(line++) = seen.min(1.0).log().transpose();
+        rows.row(line++) = log_probability(seen).transpose();
     }
     return rows;
 }

@@ -50,6 +50,7 @@ class SetReader {
         finish_tables();
         order_tables();
         detail::finish_set_file(set_file_, finding_ids_, set_, faults_);
+        index_members();
         if (!faults_.empty()) {
             throw document::LoadError(std::move(faults_));
         }
@@ -204,6 +205,28 @@ class SetReader {
                          [&](const TableFile& a, const TableFile& b) { return rank(a) < rank(b); });
         for (TableFile& file : tables_) {
             set_.tables.push_back(std::move(file.table));
+        }
+    }
+
+    /// Where the findings of groups and alternatives stand in the set.
+    void index_members() {
+        const auto indices = [&](const std::vector<std::string>& findings) {
+            std::vector<std::size_t> tables;
+            for (const std::string& finding : findings) {
+                const auto table =
+                    std::find_if(set_.tables.begin(), set_.tables.end(),
+                                 [&](const EvidenceTable& one) { return one.finding == finding; });
+                if (table != set_.tables.end()) {
+                    tables.push_back(static_cast<std::size_t>(table - set_.tables.begin()));
+                }
+            }
+            return tables;
+        };
+        for (Group& group : set_.groups) {
+            group.tables = indices(group.findings);
+        }
+        for (OneOf& list : set_.one_of) {
+            list.tables = indices(list.findings);
         }
     }
 

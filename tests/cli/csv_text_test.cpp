@@ -17,6 +17,7 @@ TEST(CsvField, QuotesCommasQuotesAndLineBreaks) {
     EXPECT_EQ(csv_field("a,b"), "\"a,b\"");
     EXPECT_EQ(csv_field("a \"b\""), "\"a \"\"b\"\"\"");
     EXPECT_EQ(csv_field("a\nb"), "\"a\nb\"");
+    EXPECT_EQ(csv_field("a\r\nb"), "\"a\r\nb\"");
 }
 
 TEST(CsvField, AFormulaStaysText) {

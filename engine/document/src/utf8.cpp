@@ -1,6 +1,8 @@
 // SPDX-License-Identifier: Apache-2.0
 #include "utf8.hpp"
 
+#include "steelyard/document/encoding.hpp"
+
 namespace steelyard::document::detail {
 
 namespace {
@@ -49,3 +51,19 @@ std::optional<CodePoint> code_point_at(std::string_view text, std::size_t offset
 }
 
 }  // namespace steelyard::document::detail
+
+namespace steelyard::document {
+
+bool is_utf8(std::string_view bytes) noexcept {
+    std::size_t at = 0;
+    while (at < bytes.size()) {
+        const auto point = detail::code_point_at(bytes, at);
+        if (!point) {
+            return false;
+        }
+        at += point->length;
+    }
+    return true;
+}
+
+}  // namespace steelyard::document

@@ -43,8 +43,12 @@ struct WeighCommand {
     std::string burden = "specialised";
     std::string until, epsilon, draws, threads;  ///< as typed; empty when not given
     std::string seed = "1";
-    std::string as = "text";
+    std::string from = "auto";
+    std::string as;  ///< empty: text for documents, csv for files of rows
     std::string out;
+    std::string rejects;
+    bool strict = false;
+    std::vector<std::string> carry;
 };
 CLI::App* setup(CLI::App& app, WeighCommand& command);
 int run(const WeighCommand& command, const Streams& streams);

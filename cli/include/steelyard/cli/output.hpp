@@ -3,6 +3,7 @@
 // Results go to standard output or, with --out, to a file that appears whole or not at all.
 
 #include <iosfwd>
+#include <memory>
 #include <stdexcept>
 #include <string>
 #include <string_view>
@@ -23,5 +24,31 @@ void write_result(const std::string& path, std::string_view text, std::ostream& 
 /// new one.
 /// @throws OutputError  when the folder cannot be written or the disk is full
 void write_whole(const std::string& path, std::string_view text);
+
+/// A result written piece by piece, whole or not at all: to `out` when the path is empty or `-`, else to a
+/// file that has no name until it is finished, so that nothing is left of it if the program is stopped
+/// before.
+class ResultWriter {
+  public:
+    /// @throws OutputError
+    ResultWriter(const std::string& path, std::ostream& out);
+    ResultWriter(const ResultWriter&) = delete;
+    ResultWriter& operator=(const ResultWriter&) = delete;
+    ResultWriter(ResultWriter&&) = delete;
+    ResultWriter& operator=(ResultWriter&&) = delete;
+    ~ResultWriter();
+
+    /// @throws OutputError
+    void write(std::string_view text);
+    /// Whether anybody still reads: false when standard output was closed, as by `| head`.
+    bool wanted() const;
+    /// Gives the file its name. Nothing is to be written afterwards. @throws OutputError
+    void finish();
+
+  private:
+    class Target;
+    std::unique_ptr<Target> file_;  ///< null: to the stream
+    std::ostream* out_;
+};
 
 }  // namespace steelyard::cli

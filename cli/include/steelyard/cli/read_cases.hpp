@@ -17,8 +17,10 @@ std::vector<likelihoods::Panel> read_cases(std::string_view text, const std::str
                                            document::Diagnostics& faults);
 
 /// Cases of files in the order given; `-` is standard input. Case names must be unique over all files.
+/// @param standard_input  its text, where it has been read already
 std::vector<likelihoods::Panel> load_cases(const std::vector<std::string>& paths,
                                            const likelihoods::FeatureVocabulary& vocabulary,
-                                           document::Diagnostics& faults);
+                                           document::Diagnostics& faults,
+                                           const std::string* standard_input = nullptr);
 
 }  // namespace steelyard::cli

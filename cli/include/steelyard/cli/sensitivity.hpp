@@ -150,4 +150,7 @@ struct Sensitivity {
 Sensitivity sensitivity_of(const likelihoods::TableSet& tables, const priors::PriorSet& priors,
                            const Weighing& weighing, const SensitivityOptions& options);
 
+/// Sensitivity::edges alone: all of it that depends on the values of a case and not only on its pattern.
+std::vector<ValueEdge> value_edges_of(const likelihoods::TableSet& tables, const Weighing& weighing);
+
 }  // namespace steelyard::cli

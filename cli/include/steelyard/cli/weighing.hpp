@@ -75,6 +75,16 @@ struct WeighOptions {
         excluded;  ///< causes excluded on the command line, for the list of those left out
 };
 
+/// Causes to weigh, in the order of the tables, their posteriors still 0; those left out are added with the
+/// reason. Parameters as weigh_case().
+std::vector<WeighedCause> causes_to_weigh(const likelihoods::TableSet& tables, const priors::PriorSet& priors,
+                                          const WeighOptions& options, std::vector<LeftOut>& left_out);
+
+/// Indices from the most probable cause to the least, ties in their order. Ranked on the log scale:
+/// probabilities near 0 may tie after rounding where their logarithms do not.
+/// @param log_scores  as engine::log_scores() gives them
+std::vector<std::size_t> ranked(const Eigen::ArrayXd& log_scores);
+
 /// @param priors  names only causes of the tables (its reader has checked) and no excluded one
 Weighing weigh_case(const likelihoods::TableSet& tables, const priors::PriorSet& priors,
                     likelihoods::Panel panel, const WeighOptions& options = {});

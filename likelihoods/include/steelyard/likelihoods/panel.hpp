@@ -67,6 +67,24 @@ struct FeatureVocabulary {
     std::map<std::string, std::vector<std::string>, std::less<>> levels;
 };
 
+/// How a plain number under one flat name and in one unit becomes a value: number x factor, in the canonical
+/// unit, if it lies in the plausible range.
+struct EntryScale {
+    std::string_view quantity;  ///< the analyte or derived quantity; `age` for the age
+    double factor = 1.0;
+    double low = 0.0, high = 0.0;
+};
+/// Whether a flat name is that of a number: an analyte, one of their other names, a derived quantity, the
+/// age.
+bool names_a_number(std::string_view flat_name) noexcept;
+/// @returns  empty when the unit is not one of this quantity: bad_unit is added at `where` then
+std::optional<EntryScale> entry_scale(std::string_view flat_name, std::string_view unit,
+                                      const document::SourcePosition& where, document::Diagnostics& faults);
+/// A flat name that may be meant by one that is not known: `did you mean serum_potassium?`, or nothing.
+/// @param text  what stands under it; a number makes it the name of a quantity
+std::string meant_by(std::string_view flat_name, const FeatureVocabulary& vocabulary,
+                     std::string_view text = {});
+
 /// Builds a panel entry by entry, whatever the file format: each reader calls `set` with flat names. Faults
 /// are added at the position given; a faulty entry leaves nothing behind.
 class PanelBuilder {

@@ -55,6 +55,10 @@ struct ReadingChange {
 /// @throws std::out_of_range  a table or cell that is not of the set
 Pattern reread(const TableSet& set, const Pattern& pattern, const std::vector<ReadingChange>& changes);
 
+/// ln of probabilities of what was seen, one by one: the same bits wherever and in whatever array they stand.
+/// A margin is a sum of probabilities and may pass 1 by a rounding; its logarithm is not above 0.
+Eigen::ArrayXd log_probability(const Eigen::Ref<const Eigen::ArrayXd>& seen);
+
 /// ln P(what was seen | cause) for the findings read: shape (read findings, causes), rows in the order of the
 /// set.
 Eigen::ArrayXXd log_likelihood_rows(const TableSet& set, const Pattern& pattern,

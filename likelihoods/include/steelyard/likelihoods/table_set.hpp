@@ -95,6 +95,7 @@ struct EvidenceTable {
 struct Group {
     std::string name;
     std::vector<std::string> findings;
+    std::vector<std::size_t> tables;  ///< the same as indices into TableSet::tables
     double rho = 0.0;
     document::Grounds grounds;
     std::string why;
@@ -104,6 +105,7 @@ struct Group {
 struct OneOf {
     std::string name;
     std::vector<std::string> findings;
+    std::vector<std::size_t> tables;  ///< the same as indices into TableSet::tables
     std::string why;
 };
 
