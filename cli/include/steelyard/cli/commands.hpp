@@ -85,6 +85,57 @@ struct PriorsCommand {
 CLI::App* setup(CLI::App& app, PriorsCommand& command);
 int run(const PriorsShowCommand& command, const Streams& streams);
 
+struct CasebookRecordCommand {
+    std::vector<std::string> cases;
+    std::string casebook;
+    std::string priors = "renal-clinic";
+    std::string tables = "adult";
+    std::vector<std::string> exclude;
+    bool weigh_anyway = false;
+    bool again = false;
+    bool salted = false;
+    std::string salt_file;
+    int wait = 30;  ///< [s]
+};
+struct CasebookOutcomeCommand {
+    std::string case_id, cause;
+    std::string casebook;
+    std::string from;
+    bool outside = false;
+    bool amend = false;
+    std::string why;
+    std::string salt_file;
+    int wait = 30;
+};
+struct CasebookListCommand {
+    std::vector<std::string> cases;
+    std::string casebook;
+    bool open = false;
+    bool all = false;
+    std::string as = "text";
+    std::string out;
+    std::string salt_file;
+    int wait = 30;
+};
+struct CasebookExportCommand {
+    std::string casebook;
+    bool all_recordings = false;
+    std::string as = "csv";
+    std::string out;
+    int wait = 30;
+};
+struct CasebookCommand {
+    CasebookRecordCommand record;
+    CasebookOutcomeCommand outcome;
+    CasebookListCommand list;
+    CasebookExportCommand write;
+};
+CLI::App* setup(CLI::App& app, CasebookCommand& command);
+int run(const CasebookRecordCommand& command, const Streams& streams);
+int run(const CasebookOutcomeCommand& command, const Streams& streams);
+int run(const CasebookListCommand& command, const Streams& streams);
+int run(const CasebookExportCommand& command, const Streams& streams);
+
 /// The whole program but for the process: parses, runs, maps every error to its exit code.
 int run_program(int argc, const char* const* argv, std::ostream& out, std::ostream& err);
 
