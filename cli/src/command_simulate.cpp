@@ -37,13 +37,13 @@ what a wrong prior does:
   steelyard simulate -n 5000 --priors general-ward --out ward.csv
   steelyard weigh ward.csv --priors renal-clinic
 
-A finding that a condition of use keeps from being read is left out; so are, with
-the chance --missing, others. Of findings that are alternatives of each other the
-preferred one is drawn, with --alternatives any one of them. What the gate asks
-for and a case does not show is stated as a limit: bicarbonate <22.
+A finding that a condition of use keeps from being read is left out; so are
+others, with the chance --missing. Of findings that are alternatives of each
+other the preferred one is drawn, with --alternatives any one of them. What the
+gate asks for and a case does not show is stated as a limit: bicarbonate <22.
 
-A derived quantity stands in its own column where no set of measured values gives
-all bands at once. YAML files are for up to some thousand cases.
+A derived quantity stands in its own column where no set of measured values
+gives all bands at once. YAML files are for up to some thousand cases.
 
 Exit codes:
   0  done
