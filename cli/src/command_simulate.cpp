@@ -4,6 +4,7 @@
 
 #include <algorithm>
 #include <array>
+#include <charconv>
 #include <optional>
 #include <ostream>
 #include <thread>
@@ -69,6 +70,16 @@ struct Counts {
         with_derived += other.with_derived;
     }
 };
+
+/// The option parser would take -1 for the largest seed. @throws UsageError
+std::uint64_t seed_of(const std::string& text) {
+    std::uint64_t seed = 0;
+    const auto [end, error] = std::from_chars(text.data(), text.data() + text.size(), seed);
+    if (error != std::errc() || end != text.data() + text.size()) {
+        throw UsageError(fmt::format("--seed {}: must be a whole number from 0 to 2^64 - 1", visible(text)));
+    }
+    return seed;
+}
 
 using AddCase = void (*)(const likelihoods::Panel&, const std::vector<likelihoods::PanelEntry>&,
                          std::string&);
@@ -203,8 +214,8 @@ int run(const SimulateCommand& command, const Streams& streams) {
     }
     const priors::PriorSet priors = without_excluded(*all_priors, *tables, command.exclude);
     const Provenance provenance = provenance_of(*tables, priors);
-    const Simulation simulation(*tables, priors,
-                                {command.seed, command.missing, command.findings, command.alternatives});
+    const Simulation simulation(
+        *tables, priors, {seed_of(command.seed), command.missing, command.findings, command.alternatives});
     for (const std::string& finding : simulation.maker().never_shown()) {
         streams.err << wrapped(
             fmt::format("steelyard: {} is in no case: its conditions of use contradict those of "

@@ -155,13 +155,13 @@ TEST(Simulate, PosteriorsOfSimulatedCasesAreCalibrated) {
     likelihoods::TableSet apart = adult();
     apart.groups.clear();  // findings are drawn apart given the cause
     // Within four standard errors, with everything drawn, some left out, and alternatives.
-    EXPECT_LT(worst_miss(apart, clinic(), clinic(), {1, 0.0, {}, false}, 1500), 4.0);
-    EXPECT_LT(worst_miss(apart, clinic(), clinic(), {2, 0.4, {}, true}, 1500), 4.0);
+    EXPECT_LT(worst_miss(apart, clinic(), clinic(), {1, 0.0, {}, false}, 800), 4.0);
+    EXPECT_LT(worst_miss(apart, clinic(), clinic(), {2, 0.4, {}, true}, 800), 4.0);
     EXPECT_LT(worst_miss(apart, clinic(), clinic(),
-                         {3, 0.0, {"serum_potassium", "gfr", "fe_urate", "tmp_gfr"}, false}, 1500),
+                         {3, 0.0, {"serum_potassium", "gfr", "fe_urate", "tmp_gfr"}, false}, 800),
               4.0);
     // And a wrong prior shows.
-    EXPECT_GT(worst_miss(apart, clinic(), priors::open_prior_set("even"), {1, 0.6, {}, false}, 1500), 4.0);
+    EXPECT_GT(worst_miss(apart, clinic(), priors::open_prior_set("even"), {1, 0.6, {}, false}, 800), 4.0);
 }
 
 TEST(Simulate, DrawsCausesByThePriorAndBandsByTheRow) {

@@ -145,8 +145,8 @@ struct SimulateCommand {
     std::vector<std::string> findings;
     double missing = 0.0;
     bool alternatives = false;
-    std::uint64_t seed = 1;
-    int threads = 0;  ///< 0: all of the machine's
+    std::string seed = "1";  ///< as typed
+    int threads = 0;         ///< 0: all of the machine's
     std::string as = "csv";
     std::string out;
 };
