@@ -95,6 +95,8 @@ int run_program(int argc, const char* const* argv, std::ostream& out, std::ostre
     CLI::App* weigh_app = setup(app, weigh);
     CLI::App* tables_app = setup(app, tables);
     CLI::App* priors_app = setup(app, priors);
+    SimulateCommand simulate;
+    const CLI::App* simulate_app = setup(app, simulate);
     CasebookCommand casebook;
     const CLI::App* casebook_app = setup(app, casebook);
 
@@ -120,6 +122,9 @@ int run_program(int argc, const char* const* argv, std::ostream& out, std::ostre
             if (tables_app->parsed()) {
                 return tables_app->got_subcommand("check") ? run(tables.check, streams)
                                                            : run(tables.show, streams);
+            }
+            if (simulate_app->parsed()) {
+                return run(simulate, streams);
             }
             if (casebook_app->parsed()) {
                 return run_casebook(*casebook_app, casebook, streams);

@@ -21,7 +21,8 @@ const std::vector<std::vector<std::string>> all_commands = {{},
                                                             {"casebook", "record"},
                                                             {"casebook", "outcome"},
                                                             {"casebook", "list"},
-                                                            {"casebook", "export"}};
+                                                            {"casebook", "export"},
+                                                            {"simulate"}};
 
 TEST(Help, EveryCommandExplainsItselfOnStandardOutput) {
     for (std::vector<std::string> command : all_commands) {

@@ -4,6 +4,7 @@
 // takes streams, so that most tests need no process.
 
 #include <CLI/CLI.hpp>
+#include <cstdint>
 #include <iosfwd>
 #include <optional>
 #include <string>
@@ -135,6 +136,22 @@ int run(const CasebookRecordCommand& command, const Streams& streams);
 int run(const CasebookOutcomeCommand& command, const Streams& streams);
 int run(const CasebookListCommand& command, const Streams& streams);
 int run(const CasebookExportCommand& command, const Streams& streams);
+
+struct SimulateCommand {
+    std::uint64_t cases = 1000;
+    std::string priors = "renal-clinic";
+    std::string tables = "adult";
+    std::vector<std::string> exclude;
+    std::vector<std::string> findings;
+    double missing = 0.0;
+    bool alternatives = false;
+    std::string seed = "1";  ///< as typed
+    int threads = 0;         ///< 0: all of the machine's
+    std::string as = "csv";
+    std::string out;
+};
+CLI::App* setup(CLI::App& app, SimulateCommand& command);
+int run(const SimulateCommand& command, const Streams& streams);
 
 /// The whole program but for the process: parses, runs, maps every error to its exit code.
 int run_program(int argc, const char* const* argv, std::ostream& out, std::ostream& err);
