@@ -29,11 +29,11 @@ constexpr const char* simulate_description =
     "check that weighing is calibrated. No case is a patient.";
 
 constexpr const char* simulate_footer =
-    R"(Cases are drawn by the prior set of --priors. Weighed with the same set and tables
-they come out calibrated, but for findings that share their weight in a group:
-the tables hold them to be related, and here they are drawn apart, so that their
-posteriors are less sure than they could be. Weighed with another set they show
-what a wrong prior does:
+    R"(Cases are drawn by the prior set of --priors. Weighed with the same set and
+tables they come out calibrated, but for findings that share their weight in a
+group: the tables hold them to be related, and here they are drawn apart, so
+that their posteriors are less sure than they could be. Weighed with another set
+they show what a wrong prior does:
 
   steelyard simulate -n 5000 --priors general-ward --out ward.csv
   steelyard weigh ward.csv --priors renal-clinic
