@@ -27,10 +27,10 @@ struct AuditOptions {
         2000;  ///< of the bootstrap, in [20, 2^28); 0 for none: then `intervals` is empty
     std::uint64_t seed = 1;
     int threads = 1;
-    Eigen::Index bins = 10;                     ///< of reliability curves, in [1, 1000]
-    Eigen::Index reference = 0;                 ///< cause that recalibration takes as its reference
-    std::vector<ActionThreshold> thresholds;    ///< for net benefit
-    std::function<void(double done)> progress;  ///< called from the calling thread only
+    Eigen::Index bins = 10;                          ///< of reliability curves, in [1, 1000]
+    Eigen::Index reference = 0;                      ///< cause that recalibration takes as its reference
+    std::vector<ActionThreshold> thresholds = {};    ///< for net benefit
+    std::function<void(double done)> progress = {};  ///< called from the calling thread only
 };
 
 /// What concerns one cause against the rest.

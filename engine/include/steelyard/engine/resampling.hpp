@@ -18,13 +18,13 @@ namespace steelyard::engine {
 struct ResamplingOptions {
     Eigen::Index replicates = 2000;  ///< in [20, 2^28)
     std::uint64_t seed = 1;
-    int threads = 1;                            ///< >= 1
-    double level = 0.95;                        ///< of the percentile intervals; in (0, 1)
-    std::function<void(double done)> progress;  ///< called from the calling thread only
+    int threads = 1;                                 ///< >= 1
+    double level = 0.95;                             ///< of the percentile intervals; in (0, 1)
+    std::function<void(double done)> progress = {};  ///< called from the calling thread only
 };
 
-/// One replicate: counts ~ Multinomial(n, count / n), n = sum of count, by binomials conditional on the cells
-/// before.
+/// One replicate: counts ~ Multinomial(n, count / n), n = sum of count, exactly. docs/method.md, "Audit",
+/// says how.
 /// @param count      patients per cell; shape (M), M >= 1; whole, >= 0; their sum in [1, 2^31)
 /// @param replicate  in [0, 2^28)
 /// @returns          shape (M), same sum   @throws DomainError
