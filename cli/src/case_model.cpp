@@ -11,9 +11,10 @@ namespace steelyard::cli {
 using likelihoods::FindingReading;
 using likelihoods::Use;
 
-CaseModel::CaseModel(const likelihoods::TableSet& tables, const Weighing& weighing) : tables_(&tables) {
-    log_prior_.resize(static_cast<Eigen::Index>(weighing.causes.size()));
-    for (const WeighedCause& cause : weighing.causes) {
+CaseModel::CaseModel(const likelihoods::TableSet& tables, const std::vector<WeighedCause>& causes)
+    : tables_(&tables) {
+    log_prior_.resize(static_cast<Eigen::Index>(causes.size()));
+    for (const WeighedCause& cause : causes) {
         log_prior_(static_cast<Eigen::Index>(causes_.size())) = std::log(cause.prior);
         causes_.push_back(cause.id);
     }

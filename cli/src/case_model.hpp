@@ -12,7 +12,7 @@ namespace steelyard::cli {
 
 class CaseModel {
   public:
-    CaseModel(const likelihoods::TableSet& tables, const Weighing& weighing);
+    CaseModel(const likelihoods::TableSet& tables, const std::vector<WeighedCause>& causes);
 
     const likelihoods::TableSet& tables() const noexcept { return *tables_; }
     const std::vector<std::string>& causes() const noexcept { return causes_; }

@@ -204,7 +204,7 @@ const std::vector<std::string>& burdens() {
 
 Sensitivity sensitivity_of(const TableSet& tables, const priors::PriorSet& priors, const Weighing& weighing,
                            const SensitivityOptions& options) {
-    const CaseModel model(tables, weighing);
+    const CaseModel model(tables, weighing.causes);
     const Pattern& pattern = weighing.pattern;
     const CaseModel::Evidence evidence = model.evidence(pattern);
     const Eigen::ArrayXd log_likelihood = evidence.log_likelihood();

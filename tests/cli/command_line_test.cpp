@@ -11,7 +11,8 @@ namespace steelyard::test {
 namespace {
 
 const std::vector<std::vector<std::string>> all_commands = {
-    {}, {"weigh"}, {"tables"}, {"tables", "show"}, {"tables", "check"}, {"priors"}, {"priors", "show"}};
+    {},         {"weigh"},         {"audit"}, {"tables"}, {"tables", "show"}, {"tables", "check"},
+    {"priors"}, {"priors", "show"}};
 
 TEST(Help, EveryCommandExplainsItselfOnStandardOutput) {
     for (std::vector<std::string> command : all_commands) {

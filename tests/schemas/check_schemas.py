@@ -61,7 +61,7 @@ for path in sorted((root / "docs").glob("*.schema.json")):
     Draft202012Validator.check_schema(schema)
     checks += 1
     validators[path.name.removesuffix(".schema.json")] = Draft202012Validator(schema)
-check(set(validators) >= {"case", "evidence-table", "prior-set", "report", "table-set", "tally"}, "a schema is missing from docs/")
+check(set(validators) >= {"case", "evidence-table", "prior-set", "audit", "report", "table-set", "tally"}, "a schema is missing from docs/")
 
 
 def accept(kind, value, name):
