@@ -90,9 +90,11 @@ int run_program(int argc, const char* const* argv, std::ostream& out, std::ostre
         ->option_text("WHEN");
 
     WeighCommand weigh;
+    AuditCommand audit;
     TablesCommand tables;
     PriorsCommand priors;
     CLI::App* weigh_app = setup(app, weigh);
+    CLI::App* audit_app = setup(app, audit);
     CLI::App* tables_app = setup(app, tables);
     CLI::App* priors_app = setup(app, priors);
     SimulateCommand simulate;
@@ -118,6 +120,9 @@ int run_program(int argc, const char* const* argv, std::ostream& out, std::ostre
         [&]() -> int {
             if (weigh_app->parsed()) {
                 return run(weigh, streams);
+            }
+            if (audit_app->parsed()) {
+                return run(audit, streams);
             }
             if (tables_app->parsed()) {
                 return tables_app->got_subcommand("check") ? run(tables.check, streams)

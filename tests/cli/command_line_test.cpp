@@ -22,7 +22,8 @@ const std::vector<std::vector<std::string>> all_commands = {{},
                                                             {"casebook", "outcome"},
                                                             {"casebook", "list"},
                                                             {"casebook", "export"},
-                                                            {"simulate"}};
+                                                            {"simulate"},
+                                                            {"audit"}};
 
 TEST(Help, EveryCommandExplainsItselfOnStandardOutput) {
     for (std::vector<std::string> command : all_commands) {

@@ -152,6 +152,29 @@ struct SimulateCommand {
 };
 CLI::App* setup(CLI::App& app, SimulateCommand& command);
 int run(const SimulateCommand& command, const Streams& streams);
+struct AuditCommand {
+    std::vector<std::string> files;
+    std::string priors = "renal-clinic";
+    std::string tables = "adult";
+    std::vector<std::string> exclude;
+    std::vector<std::string> by;
+    std::string over;
+    std::string against;
+    std::string cause;
+    std::vector<std::string> thresholds;  ///< as typed
+    bool estimate_dependence = false;
+    std::string write_groups;
+    std::string level = "0.95", replicates = "2000", seed = "1", bins = "10";  ///< as typed
+    std::string threads, least_cell;  ///< as typed; empty when not given
+    std::string keep_tally;
+    std::string from = "auto";
+    std::string rejects;
+    bool strict = false;
+    std::string as = "text";
+    std::string out;
+};
+CLI::App* setup(CLI::App& app, AuditCommand& command);
+int run(const AuditCommand& command, const Streams& streams);
 
 /// The whole program but for the process: parses, runs, maps every error to its exit code.
 int run_program(int argc, const char* const* argv, std::ostream& out, std::ostream& err);
