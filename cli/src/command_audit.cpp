@@ -5,9 +5,11 @@
 #include <algorithm>
 #include <filesystem>
 #include <limits>
+#include <map>
 #include <ostream>
 #include <thread>
 
+#include "batch/batch_counts.hpp"
 #include "exclude.hpp"
 #include "open_inputs.hpp"
 #include "option_values.hpp"
@@ -17,6 +19,8 @@
 #include "steelyard/cli/numbers.hpp"
 #include "steelyard/cli/output.hpp"
 #include "steelyard/cli/tally_file.hpp"
+#include "steelyard/cli/terminal.hpp"
+#include "steelyard/document/strict_map.hpp"
 #include "tally_inputs.hpp"
 
 namespace steelyard::cli {
@@ -166,6 +170,27 @@ void check_against(const Against& against, const likelihoods::TableSet& tables,
         check_same_causes(tables, priors, *against.tables, priors);
     } else if (against.priors) {
         check_same_causes(tables, priors, tables, *against.priors);
+    }
+}
+
+/// A final cause that is not of the tables may be meant as it stands; one that is nearly one of theirs hardly
+/// is.
+void warn_of_near_misses(const Tally& tally, const likelihoods::TableSet& tables, std::ostream& err) {
+    const std::vector<std::string> known = cause_ids(tables);
+    std::map<std::string, std::uint64_t> outside;
+    tally.for_each([&](const TallyCell& cell) {
+        if (!cell.cause.empty() && tables.find_cause(cell.cause) == nullptr) {
+            outside[std::string(cell.cause)] += cell.patients;
+        }
+    });
+    for (const auto& [cause, patients] : outside) {
+        if (const std::string near = document::nearest(cause, known); !near.empty()) {
+            err << wrapped(
+                fmt::format("steelyard: the final cause {} ({}) is none of the tables' and counts as "
+                            "another one; did you mean {}?",
+                            visible(cause), counted(patients), near),
+                "", "  ");
+        }
     }
 }
 
@@ -324,6 +349,7 @@ int run(const AuditCommand& command, const Streams& streams) {
     }
     check_against(against, *tables, priors);
     const Tally& tally = inputs->tally;
+    warn_of_near_misses(tally, *tables, streams.err);
 
     std::optional<Audit> audit;
     {

@@ -71,9 +71,26 @@ class InputSum {
     std::string first_;
 };
 
+/// Whether a file begins like a tally; also when it cannot be read, since then its reader says why.
+bool may_be_tally(const std::string& path) {
+    try {
+        std::string beginning(256, '\0');
+        beginning.resize(open_bytes(path)->read(beginning));
+        return looks_like_tally(beginning);
+    } catch (const SourceError&) {
+        return true;
+    }
+}
+
 std::optional<Tally> tally_of(CaseFile& file, document::Diagnostics& faults) {
-    if (!file.stream) {
+    if (!file.stream && may_be_tally(file.path)) {
         return load_tally(file.path, faults);
+    }
+    if (!file.stream) {
+        faults.add({file.path, 0, 0}, document::Code::bad_tally,
+                   "this is neither a file of many cases nor a tally",
+                   "give cases as CSV or NDJSON, each with its final_cause, or what --keep-tally wrote");
+        return std::nullopt;
     }
     const ReadBytes bytes = [&file](char* to, std::size_t most) {
         return file.stream->read(std::span<char>(to, most));
