@@ -11,6 +11,7 @@
 
 #include "batch/batch_weigh.hpp"
 #include "batch/result_row.hpp"
+#include "exclude.hpp"
 #include "open_inputs.hpp"
 #include "progress.hpp"
 #include "sensitivity_parts.hpp"
@@ -53,25 +54,6 @@ Exit codes:
   4  no case was weighed: all were out of scope
   5  some rows of a file of many cases could not be read and were set aside
  70  an unexpected failure of the program itself)";
-
-/// The prior set less the causes excluded on the command line.
-priors::PriorSet without_excluded(const priors::PriorSet& set, const likelihoods::TableSet& tables,
-                                  const std::vector<std::string>& excluded) {
-    std::vector<std::string> present;
-    for (const std::string& cause : excluded) {
-        if (tables.find_cause(cause) == nullptr) {
-            throw UsageError(fmt::format("--exclude {}: the tables have no such cause{}", visible(cause),
-                                         suggestion(cause, cause_ids(tables))));
-        }
-        if (set.find(cause) != nullptr && std::find(present.begin(), present.end(), cause) == present.end()) {
-            present.push_back(cause);
-        }
-    }
-    if (set.causes.size() < present.size() + 2) {
-        throw UsageError("--exclude leaves fewer than two causes: there is nothing to weigh them against");
-    }
-    return present.empty() ? set : priors::without(set, present);
-}
 
 /// A number typed as an option. @throws UsageError
 template <class Number>

@@ -19,6 +19,17 @@
 namespace steelyard::cli {
 namespace {
 
+/// The subcommand of `casebook` that was asked for.
+int run_casebook(const CLI::App& app, const CasebookCommand& command, const Streams& streams) {
+    if (app.got_subcommand("record")) {
+        return run(command.record, streams);
+    }
+    if (app.got_subcommand("outcome")) {
+        return run(command.outcome, streams);
+    }
+    return app.got_subcommand("list") ? run(command.list, streams) : run(command.write, streams);
+}
+
 constexpr const char* program_description =
     "Weighs which cause best explains a normal-gap (hyperchloraemic) metabolic acidosis: proximal, classic "
     "distal, "
@@ -79,11 +90,17 @@ int run_program(int argc, const char* const* argv, std::ostream& out, std::ostre
         ->option_text("WHEN");
 
     WeighCommand weigh;
+    AuditCommand audit;
     TablesCommand tables;
     PriorsCommand priors;
     CLI::App* weigh_app = setup(app, weigh);
+    CLI::App* audit_app = setup(app, audit);
     CLI::App* tables_app = setup(app, tables);
     CLI::App* priors_app = setup(app, priors);
+    SimulateCommand simulate;
+    const CLI::App* simulate_app = setup(app, simulate);
+    CasebookCommand casebook;
+    const CLI::App* casebook_app = setup(app, casebook);
 
     try {
         app.parse(argc, argv);
@@ -104,9 +121,18 @@ int run_program(int argc, const char* const* argv, std::ostream& out, std::ostre
             if (weigh_app->parsed()) {
                 return run(weigh, streams);
             }
+            if (audit_app->parsed()) {
+                return run(audit, streams);
+            }
             if (tables_app->parsed()) {
                 return tables_app->got_subcommand("check") ? run(tables.check, streams)
                                                            : run(tables.show, streams);
+            }
+            if (simulate_app->parsed()) {
+                return run(simulate, streams);
+            }
+            if (casebook_app->parsed()) {
+                return run_casebook(*casebook_app, casebook, streams);
             }
             return priors_app->parsed() ? run(priors.show, streams) : usage;
         },

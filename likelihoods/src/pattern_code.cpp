@@ -129,6 +129,14 @@ int states_of(const EvidenceTable& table) {
     return static_cast<int>(bands) + first_band_state;
 }
 
+std::vector<int> states_of(const TableSet& set) {
+    std::vector<int> states;
+    for (const EvidenceTable& table : set.tables) {
+        states.push_back(states_of(table));
+    }
+    return states;
+}
+
 PatternCode code_of(const TableSet& set, const Pattern& pattern) {
     PatternCode code(pattern.findings.size(), static_cast<char>(missing_state));
     for (std::size_t i = 0; i < pattern.findings.size(); ++i) {
@@ -168,10 +176,14 @@ Pattern pattern_of(const TableSet& set, std::string_view code) {
 }
 
 std::string code_in_characters(const TableSet& set, std::string_view code) {
+    return code_in_characters(states_of(set), code);
+}
+
+std::string code_in_characters(const std::vector<int>& states, std::string_view code) {
     std::string text;
     for (std::size_t i = 0; i < code.size(); ++i) {
         const auto state = static_cast<unsigned char>(code[i]);
-        const bool wide = states_of(set.tables[i]) - first_band_state > static_cast<int>(digits.size());
+        const bool wide = states[i] - first_band_state > static_cast<int>(digits.size());
         if (state < first_band_state) {
             text.append(wide ? 2 : 1, state == missing_state ? '.' : 'x');
             continue;
@@ -186,10 +198,13 @@ std::string code_in_characters(const TableSet& set, std::string_view code) {
 }
 
 std::optional<PatternCode> code_from_characters(const TableSet& set, std::string_view text) {
+    return code_from_characters(states_of(set), text);
+}
+
+std::optional<PatternCode> code_from_characters(const std::vector<int>& states, std::string_view text) {
     PatternCode code;
-    for (const EvidenceTable& table : set.tables) {
-        const int states = states_of(table);
-        const std::size_t width = states - first_band_state > static_cast<int>(digits.size()) ? 2 : 1;
+    for (const int of_table : states) {
+        const std::size_t width = of_table - first_band_state > static_cast<int>(digits.size()) ? 2 : 1;
         if (text.size() < width) {
             return std::nullopt;
         }
@@ -208,7 +223,7 @@ std::optional<PatternCode> code_from_characters(const TableSet& set, std::string
             }
             band = band * digits.size() + value;
         }
-        if (band + first_band_state >= static_cast<std::size_t>(states)) {
+        if (band + first_band_state >= static_cast<std::size_t>(of_table)) {
             return std::nullopt;
         }
         code += static_cast<char>(band + first_band_state);

@@ -10,8 +10,20 @@
 namespace steelyard::test {
 namespace {
 
-const std::vector<std::vector<std::string>> all_commands = {
-    {}, {"weigh"}, {"tables"}, {"tables", "show"}, {"tables", "check"}, {"priors"}, {"priors", "show"}};
+const std::vector<std::vector<std::string>> all_commands = {{},
+                                                            {"weigh"},
+                                                            {"tables"},
+                                                            {"tables", "show"},
+                                                            {"tables", "check"},
+                                                            {"priors"},
+                                                            {"priors", "show"},
+                                                            {"casebook"},
+                                                            {"casebook", "record"},
+                                                            {"casebook", "outcome"},
+                                                            {"casebook", "list"},
+                                                            {"casebook", "export"},
+                                                            {"simulate"},
+                                                            {"audit"}};
 
 TEST(Help, EveryCommandExplainsItselfOnStandardOutput) {
     for (std::vector<std::string> command : all_commands) {

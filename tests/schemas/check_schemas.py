@@ -61,7 +61,7 @@ for path in sorted((root / "docs").glob("*.schema.json")):
     Draft202012Validator.check_schema(schema)
     checks += 1
     validators[path.name.removesuffix(".schema.json")] = Draft202012Validator(schema)
-check(set(validators) >= {"case", "evidence-table", "prior-set", "report", "table-set"}, "a schema is missing from docs/")
+check(set(validators) >= {"case", "evidence-table", "prior-set", "audit", "report", "table-set", "tally"}, "a schema is missing from docs/")
 
 
 def accept(kind, value, name):
@@ -241,6 +241,23 @@ for key in ("sensitivity", "fit", "next"):
 spoil("report", refused, [
     ("gate/status", "in_scope", "causes"), ("ledger", report["ledger"], "ledger"), ("causes", report["causes"][:1], "causes"),
     ("sensitivity", {}, "sensitivity")])
+
+# Tallies: the head, then cells.
+head = {
+    "format": "steelyard.tally/1", "versions": ["0.1.0"], "tables": {"title": "t", "digest": "sha256:" + "a" * 64}, "reading": "sha256:" + "b" * 64,
+    "causes": ["wet", "dry"], "findings": [{"id": "rain", "states": 4}], "by": ["ward"], "over": "month", "least_cell": 5,
+    "lost": {"cells": 1, "patients": 3},
+    "flow": {"read": 20, "weighed": 13, "out_of_scope": 6, "set_aside": 1, "diagnosed": 10, "outside": 0, "undiagnosed": 3},
+    "out_of_scope": [{"final_cause": "", "patients": 6}], "cells": 1}
+spoil("tally", head, [
+    ("format", "steelyard.tally/2", "format"), ("flow/read", -1, "flow/read"), ("flow/read", 1.5, "flow/read"), ("flow/seen", 1, "flow"),
+    ("lost", gone, ""), ("patient", "a", ""), ("least_cell", 0, "least_cell"), ("over", "day", "over"), ("causes", ["wet", "wet"], "causes"),
+    ("findings/0/states", 2, "findings/0/states"), ("out_of_scope/0/patients", 0, "out_of_scope/0/patients"), ("reading", "b", "reading"),
+    ("by", "ward", "by"), ("cells", gone, "")])
+cells = json.loads((root / "docs" / "tally.schema.json").read_text(encoding="utf-8"))
+validators["cell"] = Draft202012Validator({"$ref": "#/$defs/cell", "$defs": cells["$defs"]})
+spoil("cell", ["3.0x", "in_scope", "wet", "", "2025-03", 4], [
+    ("0", "3 0", "0"), ("1", "out_of_scope", "1"), ("2", "x" * 201, "2"), ("4", "2025-13", "4"), ("5", 0, "5"), ("5", "4", "5")])
 
 for fault in faults:
     print(fault, file=sys.stderr)

@@ -23,8 +23,8 @@ namespace steelyard::test {
 /// A folder of the test's own, removed at the end.
 class WorkDir {
   public:
-    WorkDir() {
-        std::string name = (std::filesystem::temp_directory_path() / "steelyard-test-XXXXXX").string();
+    explicit WorkDir(const std::filesystem::path& parent = std::filesystem::temp_directory_path()) {
+        std::string name = (parent / "steelyard-test-XXXXXX").string();
         if (mkdtemp(name.data()) == nullptr) {
             throw std::runtime_error("no temporary folder");
         }

@@ -87,6 +87,40 @@ std::vector<std::string> input_forms() {
     return {"auto", "yaml", "json", "csv", "ndjson"};
 }
 
+namespace {
+
+/// Tells the form from the first bytes.
+void look_inside(CaseFile& file) {
+    std::unique_ptr<ByteSource> source;
+    try {
+        source = open_bytes(file.path);
+    } catch (const SourceError&) {
+        return;  // whoever reads it will say what is wrong
+    }
+    try {
+        std::string head(looked_at, '\0');
+        std::size_t size = 0;
+        // As much as comes, but of a stream only a line: a terminal gives one at a time.
+        while (size < head.size()) {
+            const std::size_t got = source->read(std::span<char>(head).subspan(size));
+            size += got;
+            const bool line = std::memchr(head.data(), '\n', size) != nullptr;
+            if (got == 0 || (file.path == "-" && line)) {
+                break;
+            }
+        }
+        head.resize(size);
+        file.form = form_by_content(head);
+        if (file.path == "-") {
+            file.stream = std::make_unique<WithHead>(std::move(head), std::move(source));
+        }
+    } catch (const SourceError& error) {
+        unreadable(file.path, error);
+    }
+}
+
+}  // namespace
+
 CaseFile look_at(const std::string& path, const std::string& stated_form) {
     CaseFile file{path, std::nullopt, nullptr, {}};
     if (stated_form != "auto") {
@@ -96,27 +130,7 @@ CaseFile look_at(const std::string& path, const std::string& stated_form) {
     } else if (path != "-" && (form_by_name(path) || named_as_document(path))) {
         file.form = form_by_name(path);
     } else {
-        try {
-            auto source = open_bytes(path);
-            std::string head(looked_at, '\0');
-            std::size_t size = 0;
-            // As much as comes, but of a stream only a line: a terminal gives one at a time.
-            while (size < head.size()) {
-                const std::size_t got = source->read(std::span<char>(head).subspan(size));
-                size += got;
-                const bool line = std::memchr(head.data(), '\n', size) != nullptr;
-                if (got == 0 || (path == "-" && line)) {
-                    break;
-                }
-            }
-            head.resize(size);
-            file.form = form_by_content(head);
-            if (path == "-") {
-                file.stream = std::make_unique<WithHead>(std::move(head), std::move(source));
-            }
-        } catch (const SourceError&) {
-            file.form.reset();  // whoever reads it will say what is wrong
-        }
+        look_inside(file);
     }
     if (path == "-" && !file.stream) {
         file.stream = open_bytes(path);

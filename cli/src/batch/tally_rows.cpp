@@ -3,12 +3,15 @@
 
 #include <fmt/format.h>
 
+#include <algorithm>
 #include <chrono>
 #include <memory>
 #include <ostream>
+#include <utility>
 
 #include "ordered_work.hpp"
 #include "rejects.hpp"
+#include "steelyard/cli/terminal.hpp"
 #include "unread_columns.hpp"
 
 namespace steelyard::cli {
@@ -43,50 +46,54 @@ class RowCounter {
     void read(TallyItem& item) {
         item.rejected.clear();
         item.rows = 0;
-        const CaseColumns& columns = item.file->columns;
-        reader_.read(item.block, item.file->form.value(), item.file->path, columns, [&](const Row& row) {
-            ++item.rows;
-            std::string_view month;
-            if (row.reading && columns.over) {
-                month = month_of_row(row, columns, item);
-            }
-            if (!row.reading || !rejected_for_date_.faults.empty()) {
-                item.rejected.push_back(row.reading ? std::exchange(rejected_for_date_, {})
-                                                    : RejectedRow::of(row));
-                tally_.add_set_aside();
-                return;
-            }
-            stratum_.clear();
-            for (const std::size_t column : columns.by) {
-                stratum_ += stratum_.empty() && column == columns.by.front() ? "" : " / ";
-                stratum_ += (*row.fields)[column];
-            }
-            tally_.add(row.reading->code, row.reading->gate, row.final_cause, stratum_, month);
-        });
+        reader_.read(item.block, item.file->form.value(), item.file->path, item.file->columns,
+                     [&](const Row& row) { count(row, item); });
     }
     const Tally& tally() const noexcept { return tally_; }
 
   private:
-    std::string_view month_of_row(const Row& row, const CaseColumns& columns, const TallyItem& item) {
-        const std::string_view date = (*row.fields)[*columns.over];
-        const std::string_view month = month_of(date);
-        if (month.empty() && !date.empty()) {
-            rejected_for_date_ = {
-                std::string(row.case_id),
-                {{{item.file->path, row.where.line, 1},
-                  document::Code::bad_format,
-                  fmt::format("{} is \"{}\", which is no date", columns.columns[*columns.over].name, date),
-                  "write the year first: 2025-03-17",
-                  {}}},
-                {std::string(date)}};
+    void count(const Row& row, TallyItem& item) {
+        ++item.rows;
+        const CaseColumns& columns = item.file->columns;
+        if (!row.reading) {
+            item.rejected.push_back(RejectedRow::of(row));
+            tally_.add_set_aside();
+            return;
         }
-        return month;
+        std::string_view month;
+        if (columns.over) {
+            const std::string_view date = (*row.fields)[*columns.over];
+            month = month_of(date);
+            if (month.empty() && !date.empty()) {
+                item.rejected.push_back(no_date(row, columns.columns[*columns.over].name, date));
+                tally_.add_set_aside();
+                return;
+            }
+        }
+        stratum_.clear();
+        for (std::size_t i = 0; i < columns.by.size(); ++i) {
+            stratum_ += i > 0 ? " / " : "";
+            stratum_ += (*row.fields)[columns.by[i]];
+        }
+        tally_.add(row.reading->code, row.reading->gate, row.final_cause, stratum_, month);
+    }
+
+    static RejectedRow no_date(const Row& row, const std::string& column, std::string_view date) {
+        RejectedRow rejected;
+        rejected.case_id = row.case_id;
+        document::Diagnostic fault;
+        fault.where = row.where;
+        fault.code = document::Code::bad_format;
+        fault.message = fmt::format("{} is \"{}\", which is no date", column, date);
+        fault.hint = "write the year first: 2025-03-17";
+        rejected.faults.push_back(std::move(fault));
+        rejected.values.emplace_back(date);
+        return rejected;
     }
 
     RowReader reader_;
     Tally tally_;
     std::string stratum_;
-    RejectedRow rejected_for_date_;
 };
 
 }  // namespace
@@ -161,6 +168,9 @@ Tally tally_rows(std::vector<CaseFile> files, const likelihoods::TableSet& table
     for (const auto& counter : counters) {
         all.merge(counter->tally());
     }
+    const TallyFlow flow = all.flow();
+    const BatchCounts counts{flow.weighed, flow.out_of_scope, flow.set_aside};
+    streams.err << wrapped("steelyard: " + counts.in_words(), "", "  ");
     return all;
 }
 

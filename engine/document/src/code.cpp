@@ -25,10 +25,12 @@ constexpr std::array code_names = std::to_array<std::string_view>(
      // evidence tables and table sets
      "bad-edges", "band-count", "band-sum", "band-zero", "row-form", "missing-row", "ratio-sum",
      "ratio-chain", "study-mix", "bad-joint", "unknown-finding", "duplicate-finding", "unknown-quantity",
-     "bad-group", "bad-one-of", "bad-composite", "bad-gate", "bad-variation", "missing-file"});
+     "bad-group", "bad-one-of", "bad-composite", "bad-gate", "bad-variation", "missing-file",
+     // tallies
+     "bad-tally", "tally-mismatch"});
 
 // The enum has no count of its own; a code added to it without a name here stops the build.
-static_assert(code_names.size() == static_cast<std::size_t>(Code::missing_file) + 1);
+static_assert(code_names.size() == static_cast<std::size_t>(Code::tally_mismatch) + 1);
 }  // namespace
 
 std::string_view to_string(Code code) noexcept {

@@ -8,6 +8,7 @@
 #include <optional>
 #include <string>
 #include <string_view>
+#include <vector>
 
 #include "steelyard/likelihoods/pattern.hpp"
 
@@ -24,6 +25,9 @@ inline constexpr unsigned char first_band_state = 2;
 /// How many states a table has, the first two among them. @throws std::length_error  more than 256
 int states_of(const EvidenceTable& table);
 
+/// The same for every table of a set, in its order.
+std::vector<int> states_of(const TableSet& set);
+
 /// @param pattern  as read_pattern() gives it
 PatternCode code_of(const TableSet& set, const Pattern& pattern);
 
@@ -36,6 +40,10 @@ Pattern pattern_of(const TableSet& set, std::string_view code);
 std::string code_in_characters(const TableSet& set, std::string_view code);
 /// The inverse; empty when the text is none of this set.
 std::optional<PatternCode> code_from_characters(const TableSet& set, std::string_view text);
+/// Both from the number of states alone: how a code is written depends on nothing else of the set.
+/// @param states  states_of() each table
+std::string code_in_characters(const std::vector<int>& states, std::string_view code);
+std::optional<PatternCode> code_from_characters(const std::vector<int>& states, std::string_view text);
 
 /// A digest of all that decides which bands a panel is read in: findings, bands, conditions of use, gate. Two
 /// sets that differ only in their rows, groups or alternatives have the same one, and patterns of the one

@@ -80,7 +80,10 @@ enum class Code {
     bad_composite,
     bad_gate,
     bad_variation,
-    missing_file
+    missing_file,
+    // tallies
+    bad_tally,
+    tally_mismatch
 };
 
 /// The code as written in messages and docs: `band-sum`.
