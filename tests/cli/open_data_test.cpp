@@ -12,6 +12,7 @@
 #include "reference_table.hpp"
 #include "run_program.hpp"
 #include "steelyard/cli/commands.hpp"
+#include "steelyard/engine/audit.hpp"
 
 namespace steelyard::test {
 namespace {
@@ -145,7 +146,7 @@ class WithoutOne {
     }
     std::string table(std::size_t f) const {
         std::string text = "format: steelyard.evidence-table/1\nfinding: " + rows_[0][f + 1] +
-                           "\nlevels: [low, middle, high]\nleast: 1e-9\nrows:\n";
+                           "\ntitle: Test" + "\nlevels: [low, middle, high]\nleast: 1e-9\nrows:\n";
         for (std::size_t k = 0; k < 2; ++k) {
             const std::array<int, 3>& counts = counts_[f][k];
             const int all = counts[0] + counts[1] + counts[2] + 3;
@@ -173,6 +174,8 @@ TEST(OpenData, EveryUrineLeftOutOfItsTablesAndPriorsIsAsWorkedOutElsewhere) {
     const auto expected = left_out.expected();
     ASSERT_EQ(expected.size(), without.cases() + 1);
     const ReferenceTable published("open_data.csv");
+    const auto cases = static_cast<Eigen::Index>(without.cases());
+    engine::AuditSample sample{Eigen::ArrayXXd(cases, 2), Eigen::ArrayXXd::Zero(cases, 2)};
     const WorkDir dir;
     for (std::size_t row = 1; row <= without.cases(); ++row) {
         // Within this process: 79 programs would be slow to start.
@@ -189,10 +192,26 @@ TEST(OpenData, EveryUrineLeftOutOfItsTablesAndPriorsIsAsWorkedOutElsewhere) {
         for (std::size_t k = 0; k < 2; ++k) {
             EXPECT_TRUE(near_rel(std::stod(expected[row][k + 1]), std::stod(results[1][k + 1]), 1e-12))
                 << results[1][0];
+            sample.log_forecast(static_cast<Eigen::Index>(row) - 1, static_cast<Eigen::Index>(k)) =
+                std::log(std::stod(results[1][k + 1]));
         }
+        sample.count(static_cast<Eigen::Index>(row) - 1, std::stoi(expected[row][0])) = 1.0;
         match_published(published, left_out, results[1]);
     }
     EXPECT_EQ(published_posteriors_not_compared(published, left_out.id), std::vector<std::string>());
+
+    // No command audits cases that each have tables of their own; the engine does.
+    const engine::AuditFigures figures = engine::audit(sample, {.replicates = 0});
+    const engine::CauseFigures& crystals = figures.cause[1];
+    const ReferenceTable table("audit_end_to_end.csv");
+    EXPECT_TRUE(table.matches(left_out.id, "log_score_nats", figures.scores.log_score));
+    EXPECT_TRUE(table.matches(left_out.id, "brier_sum_over_classes", figures.scores.brier));
+    EXPECT_TRUE(table.matches(left_out.id, "top1_count", std::round(figures.calls.top[0].value * 79.0)));
+    EXPECT_TRUE(table.matches(left_out.id, "auc", crystals.area->value));
+    EXPECT_TRUE(published.matches(left_out.id, "auc_delong_lower", crystals.area->interval->low));
+    EXPECT_TRUE(published.matches(left_out.id, "auc_delong_upper", crystals.area->interval->high));
+    EXPECT_TRUE(table.matches(left_out.id, "cox_slope", crystals.calibration.cox->slope));
+    EXPECT_TRUE(table.matches(left_out.id, "spiegelhalter_z", crystals.spiegelhalter->z));
 }
 
 }  // namespace
