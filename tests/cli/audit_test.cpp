@@ -310,7 +310,7 @@ TEST(Audit, KeepsStrataAndMonthsApart) {
 TEST(Audit, SuggestsTheDependenceThatThePatientsShow) {
     // Two findings that are one and the same: together they must count as one.
     likelihoods::TableSet set = tables();
-    set.groups.push_back({"twins", {"thirst", "tremor"}, 0.2, {}, ""});
+    set.groups.push_back({"twins", {"thirst", "tremor"}, {0, 1}, 0.2, {}, ""});
     set.tables[1].rows = set.tables[0].rows;
     DrawnSeries drawn = series(3000);
     drawn.missing = 0.0;
@@ -400,7 +400,7 @@ TEST(Audit, KeepsItsLinesToThePage) {
 TEST(Audit, HoldsItsSchema) {
     const WorkDir dir;
     likelihoods::TableSet set = tables();
-    set.groups.push_back({"pair", {"thirst", "tremor"}, 0.2, {}, ""});
+    set.groups.push_back({"pair", {"thirst", "tremor"}, {0, 1}, 0.2, {}, ""});
     AuditAsked asked = quickly();
     asked.dependence = true;
     asked.cause = "west";
