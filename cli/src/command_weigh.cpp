@@ -384,14 +384,15 @@ int run(const WeighCommand& command, const Streams& streams) {
     if (command.brief || command.full) {
         length = command.brief ? Length::brief : Length::full;
     }
+    const std::string as = command.as.empty() ? (rows ? "csv" : "text") : command.as;
     const BatchWork work{*tables,
                          priors,
                          provenance_of(*tables, priors),
                          {command.weigh_anyway, command.exclude},
                          options,
-                         command.brief && command.as != "text",
+                         command.brief && as != "text",
                          length,
-                         command.as.empty() ? (rows ? "csv" : "text") : command.as,
+                         as,
                          command.out,
                          command.rejects,
                          command.strict,

@@ -35,7 +35,7 @@ TEST(Code, ListsEachOnceInTheOrderOfTheEnum) {
         names.insert(to_string(all_codes()[i]));
     }
     EXPECT_EQ(names.size(), all_codes().size());
-    EXPECT_EQ(all_codes().back(), Code::missing_file);
+    EXPECT_EQ(all_codes().back(), Code::tally_mismatch);
 }
 
 TEST(Diagnostics, AreSortedByFileOfFirstMentionThenPlaceThenDiscovery) {

@@ -30,10 +30,9 @@ std::pair<std::string_view, std::string_view> name_and_unit(std::string_view tit
 
 class HeaderReader {
   public:
-    HeaderReader(const std::string& file, const likelihoods::PointReader& reader,
-                 const likelihoods::FeatureVocabulary& vocabulary, const ColumnWishes& wishes,
+    HeaderReader(const std::string& file, const likelihoods::PointReader& reader, const ColumnWishes& wishes,
                  Diagnostics& faults)
-        : file_(file), reader_(reader), vocabulary_(vocabulary), wishes_(wishes), faults_(faults) {}
+        : file_(file), reader_(reader), wishes_(wishes), faults_(faults) {}
 
     CaseColumns run(const Block& header) {
         if (!is_text(header)) {
@@ -171,7 +170,6 @@ class HeaderReader {
 
     const std::string& file_;
     const likelihoods::PointReader& reader_;
-    const likelihoods::FeatureVocabulary& vocabulary_;
     const ColumnWishes& wishes_;
     Diagnostics& faults_;
     const char* begin_ = nullptr;
@@ -182,9 +180,8 @@ class HeaderReader {
 }  // namespace
 
 CaseColumns read_header(const Block& header, const std::string& file, const likelihoods::PointReader& reader,
-                        const likelihoods::FeatureVocabulary& vocabulary, const ColumnWishes& wishes,
-                        Diagnostics& faults) {
-    return HeaderReader(file, reader, vocabulary, wishes, faults).run(header);
+                        const ColumnWishes& wishes, Diagnostics& faults) {
+    return HeaderReader(file, reader, wishes, faults).run(header);
 }
 
 std::string columns_in_words(const std::vector<std::string>& names,

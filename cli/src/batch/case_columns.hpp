@@ -42,8 +42,7 @@ struct CaseColumns {
 
 /// Reads the header. Faults of it are added; `columns` is then not to be used.
 CaseColumns read_header(const Block& header, const std::string& file, const likelihoods::PointReader& reader,
-                        const likelihoods::FeatureVocabulary& vocabulary, const ColumnWishes& wishes,
-                        document::Diagnostics& faults);
+                        const ColumnWishes& wishes, document::Diagnostics& faults);
 
 /// `serum_potasium (did you mean serum_potassium?), ward`.
 std::string columns_in_words(const std::vector<std::string>& names,

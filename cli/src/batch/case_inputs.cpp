@@ -173,8 +173,7 @@ CaseInputs::CaseInputs(std::vector<CaseFile> files, const RowReader& reader, con
                 continue;
             }
             if (file.form == CaseForm::csv) {
-                file.columns =
-                    read_header(header, file.path, reader.points(), reader.vocabulary(), wishes, faults);
+                file.columns = read_header(header, file.path, reader.points(), wishes, faults);
             }
             if (!again) {
                 if (kept_) {
