@@ -276,6 +276,7 @@ std::vector<std::string> kept_ids(const std::string& path, const std::string& sa
         const Database database = open_casebook_for_reading(path, wait);
         const std::string salt = salt_of(database, path, salt_file);
         std::vector<std::string> ids;
+        ids.reserve(case_ids.size());
         for (const std::string& id : case_ids) {
             ids.push_back(salt.empty() ? id : salted(salt, id));
         }

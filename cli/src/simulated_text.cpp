@@ -15,7 +15,6 @@ namespace {
 
 using likelihoods::Panel;
 using likelihoods::PanelEntry;
-using likelihoods::Reading;
 
 constexpr std::array<std::string_view, 5> measured_sections = {"serum", "plasma", "arterial", "venous",
                                                                "urine"};

@@ -74,8 +74,13 @@ class InputSum {
 /// Whether a file begins like a tally; also when it cannot be read, since then its reader says why.
 bool may_be_tally(const std::string& path) {
     try {
+        const std::unique_ptr<ByteSource> bytes = open_bytes(path);
         std::string beginning(256, '\0');
-        beginning.resize(open_bytes(path)->read(beginning));
+        std::size_t size = 0;
+        for (std::size_t got = 1; got > 0 && size < beginning.size(); size += got) {
+            got = bytes->read(std::span<char>(beginning).subspan(size));
+        }
+        beginning.resize(size);
         return looks_like_tally(beginning);
     } catch (const SourceError&) {
         return true;

@@ -144,6 +144,7 @@ Tally tally_rows(std::vector<CaseFile> files, const likelihoods::TableSet& table
 
     const TallyHead head = tally_head(tables, wanted.by, !wanted.over.empty());
     std::vector<std::unique_ptr<RowCounter>> counters;
+    counters.reserve(static_cast<std::size_t>(wanted.threads));
     for (int i = 0; i < wanted.threads; ++i) {
         counters.push_back(std::make_unique<RowCounter>(tables, head));
     }

@@ -72,7 +72,7 @@ class PanelMaker {
     class Making;
 
     struct Bounds {
-        double low, high;
+        double low = 0.0, high = 0.0;
         bool high_open = false;
         bool low_open = false;
     };
