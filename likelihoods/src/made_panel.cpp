@@ -192,12 +192,12 @@ Reading below(double limit, const Kind& one) {
 /// One case in the making.
 class PanelMaker::Making {
   public:
-    Making(const PanelMaker& maker, const BandsToShow& bands, std::span<const double> numbers, bool directly)
+    Making(const PanelMaker& maker, BandsToShow bands, std::span<const double> numbers, bool directly)
         : maker_(maker),
           set_(maker.set_),
           numbers_(numbers),
           directly_(directly),
-          shown_(bands),
+          shown_(std::move(bands)),
           value_(kinds().size()),
           limit_(kinds().size(), std::numeric_limits<double>::quiet_NaN()) {}
 
