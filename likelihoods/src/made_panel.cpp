@@ -9,6 +9,7 @@
 #include <limits>
 #include <map>
 #include <stdexcept>
+#include <utility>
 
 #include "band_edges.hpp"
 #include "quantity_text.hpp"

@@ -318,16 +318,17 @@ class PointReader::Impl {
         Plan plan;
         std::bitset<most_quantities> needed = needed_;
         std::bitset<most_quantities> used_later;
-        for (auto step = all.rbegin(); step != all.rend(); ++step) {
-            const auto target = static_cast<std::size_t>(quantity_number(step->id));
+        std::reverse(all.begin(), all.end());  // what later steps need is known before the earlier ones
+        for (const detail::DerivationStep& step : all) {
+            const auto target = static_cast<std::size_t>(quantity_number(step.id));
             if (!needed.test(target)) {
                 continue;
             }
             Step one;
             one.target = static_cast<int>(target);
-            one.formula = step->formula;
+            one.formula = step.formula;
             one.needed_later = used_later.test(target);
-            for (const std::string_view input : step->inputs) {
+            for (const std::string_view input : step.inputs) {
                 one.inputs.at(one.count) = quantity_number(input);
                 needed.set(static_cast<std::size_t>(one.inputs.at(one.count)));
                 used_later.set(static_cast<std::size_t>(one.inputs.at(one.count)));
