@@ -71,7 +71,7 @@ class InputSum {
     std::string first_;
 };
 
-/// Whether a file begins like a tally; also when it cannot be read, since then its reader says why.
+/// Whether a file begins like a tally; also when it is empty or cannot be read, since its reader says so.
 bool may_be_tally(const std::string& path) {
     try {
         const std::unique_ptr<ByteSource> bytes = open_bytes(path);
@@ -81,7 +81,7 @@ bool may_be_tally(const std::string& path) {
             got = bytes->read(std::span<char>(beginning).subspan(size));
         }
         beginning.resize(size);
-        return looks_like_tally(beginning);
+        return size == 0 || looks_like_tally(beginning);
     } catch (const SourceError&) {
         return true;
     }

@@ -509,7 +509,7 @@ TEST_F(AuditCommandLine, TellsEachMistake) {
     refused({}, 2, "files is required");
     refused({dir_.file("none.tally")}, 3, "unreadable-file");
     refused({dir_.write("empty.tally", "")}, 3, "empty-document");
-    refused({dir_.write("cases.tally", "case,final_cause\n")}, 3, "cases.tally:1:1");
+    refused({dir_.write("notes.tally", "notes\n")}, 3, "neither a file of many cases nor a tally");
     refused({a, "--by", "ward"}, 3, "it keeps no strata");
     refused({a, "--over", "date"}, 3, "it keeps no months");
     refused({a, "--threshold", "0.2"}, 2, "--threshold needs --cause");
