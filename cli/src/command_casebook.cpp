@@ -24,8 +24,7 @@ namespace {
 
 constexpr const char* casebook_description =
     "Keep a clinic's register in one file: what was said of each case at the time, and the final cause found "
-    "later. "
-    "`steelyard audit` reads it.";
+    "later.";
 
 constexpr const char* casebook_footer =
     R"(A casebook is data of patients, also with hashed ids: keep it as such. It is an
