@@ -3,7 +3,6 @@
 #include <fmt/format.h>
 
 #include <algorithm>
-#include <charconv>
 #include <limits>
 #include <optional>
 #include <ostream>
@@ -13,6 +12,7 @@
 #include "batch/result_row.hpp"
 #include "exclude.hpp"
 #include "open_inputs.hpp"
+#include "option_values.hpp"
 #include "progress.hpp"
 #include "sensitivity_parts.hpp"
 #include "steelyard/cli/commands.hpp"
@@ -55,21 +55,9 @@ Exit codes:
   5  some rows of a file of many cases could not be read and were set aside
  70  an unexpected failure of the program itself)";
 
-/// A number typed as an option. @throws UsageError
-template <class Number>
-Number number_option(const char* option, const std::string& text, Number low, Number high,
-                     const std::string& must_be) {
-    Number value{};
-    const auto [end, error] = std::from_chars(text.data(), text.data() + text.size(), value);
-    if (error != std::errc() || end != text.data() + text.size() || !(value >= low && value <= high)) {
-        throw UsageError(fmt::format("{} {}: must be {}", option, visible(text), must_be));
-    }
-    return value;
-}
-
 /// A share strictly between 0 and 1, or with the ends. @throws UsageError
 double share_option(const char* option, const std::string& text, bool with_ends) {
-    const double value = number_option(
+    const double value = number_in_option(
         option, text, 0.0, 1.0,
         fmt::format("a fraction {}, as 0.9 for 90 %", with_ends ? "from 0 to 1" : "between 0 and 1"));
     if (!with_ends && (value == 0.0 || value == 1.0)) {
@@ -82,16 +70,16 @@ double share_option(const char* option, const std::string& text, bool with_ends)
 SensitivityOptions sensitivity_options(const WeighCommand& command) {
     SensitivityOptions options;
     options.seed =
-        number_option<std::uint64_t>("--seed", command.seed, 0, std::numeric_limits<std::uint64_t>::max(),
-                                     "a whole number from 0 to 2^64 - 1");
+        number_in_option<std::uint64_t>("--seed", command.seed, 0, std::numeric_limits<std::uint64_t>::max(),
+                                        "a whole number from 0 to 2^64 - 1");
     if (!command.draws.empty()) {
-        options.draws = number_option<Eigen::Index>("--draws", command.draws, 1000, 1'000'000,
-                                                    "a whole number from 1000 to 1000000");
+        options.draws = number_in_option<Eigen::Index>("--draws", command.draws, 1000, 1'000'000,
+                                                       "a whole number from 1000 to 1000000");
     }
     options.threads =
         command.threads.empty()
             ? static_cast<int>(std::clamp(std::thread::hardware_concurrency(), 1U, 256U))
-            : number_option("--threads", command.threads, 1, 256, "a whole number from 1 to 256");
+            : number_in_option("--threads", command.threads, 1, 256, "a whole number from 1 to 256");
     if (!command.epsilon.empty()) {
         options.epsilon = share_option("--epsilon", command.epsilon, true);
     }
